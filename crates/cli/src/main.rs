@@ -1,0 +1,2 @@
+//! The hillpull program.
+fn main() {}
