@@ -1,0 +1,16 @@
+//! The one bibliography: every source a doc comment of hillpull names.
+
+macro_rules! sources {
+    ($($name:ident = $text:literal;)*) => {
+        $(#[doc = $text] pub const $name: &str = $text;)*
+    };
+}
+
+sources! {
+    CODATA_2018 = "Tiesinga E., Mohr P. J., Newell D. B., Taylor B. N., 2021, CODATA recommended values of the fundamental physical constants: 2018, Reviews of Modern Physics 93, 025010.";
+    WGS84 = "NIMA TR8350.2, 2000, Department of Defense World Geodetic System 1984, its definition and relationships with local geodetic systems, 3rd edition, amendment 1, table 3.1.";
+    HAYFORD_BOWIE_1912 = "Hayford J. F., Bowie W., 1912, The effect of topography and isostatic compensation upon the intensity of gravity, US Coast and Geodetic Survey Special Publication 10.";
+    HINZE_2003 = "Hinze W. J., 2003, Bouguer reduction density, why 2.67?, Geophysics 68, 1559-1560.";
+    LAFEHR_1991 = "LaFehr T. R., 1991, An exact solution for the gravity curvature (Bullard B) correction, Geophysics 56, 1179-1184.";
+    BOWRING_1976 = "Bowring B. R., 1976, Transformation from spatial to geographical coordinates, Survey Review 23, 323-327.";
+}
