@@ -5,5 +5,6 @@
 //! Sources stand in [`bibliography`].
 
 pub mod bibliography;
+pub mod bodies;
 pub mod constants;
 pub mod ellipsoid;
