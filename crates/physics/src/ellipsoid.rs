@@ -201,17 +201,17 @@ mod tests {
         let pole = std::f64::consts::FRAC_PI_2;
         assert_relative_eq!(
             e.meridian_radius_m(pole),
-            6_399_593.6258,
+            6_399_593.625_8,
             max_relative = 1e-11
         );
         assert_relative_eq!(
             e.prime_vertical_radius_m(pole),
-            6_399_593.6258,
+            6_399_593.625_8,
             max_relative = 1e-11
         );
         assert_relative_eq!(
             e.foot_ecef_m(0.3, pole)[2],
-            6_356_752.3142,
+            6_356_752.314_2,
             max_relative = 1e-11
         );
         // at the equator M = a (1 - e2) = b^2 / a

@@ -23,7 +23,7 @@ use std::f64::consts::PI;
 #[must_use]
 pub fn cap_mgal(height_m: f64, radius_m: f64, density_kg_m3: f64, big_g: f64) -> f64 {
     let ring = Ring::new(EARTH_RADIUS_M + height_m, 0.0, radius_m / EARTH_RADIUS_M);
-    big_g * density_kg_m3 * -ring.from_station_m(-height_m) * MGAL_PER_M_S2
+    big_g * density_kg_m3 * -ring.outwards_m(0.0, -height_m) * MGAL_PER_M_S2
 }
 
 /// Attraction of a ring of a spherical shell per unit of `G rho`, metres, positive down, for a station on its axis.
@@ -43,7 +43,7 @@ pub fn ring_m(s_m: f64, psi1_rad: f64, psi2_rad: f64, from_m: f64, to_m: f64) ->
     let ring = Ring::new(s_m, psi1_rad, psi2_rad);
     let (near, far) = (from_m - s_m, to_m - s_m);
     if near * far < 0.0 {
-        ring.from_station_m(far) - ring.from_station_m(near)
+        ring.outwards_m(0.0, far) - ring.outwards_m(0.0, near)
     } else if near.abs() <= far.abs() {
         ring.outwards_m(near, far)
     } else {
@@ -87,11 +87,6 @@ impl Ring {
             -t / l1
         };
         PI * r / (s * s) * (s * r * self.difference / (l1 + l2)) * (1.0 + towards * (s + r) / l2)
-    }
-
-    /// From the station's own radius to `t` above it (negative: below, which also changes the sign).
-    fn from_station_m(&self, t: f64) -> f64 {
-        self.outwards_m(0.0, t)
     }
 
     /// From `near` to `far`, both on one side of the station's radius, `near` the closer one.
@@ -190,7 +185,7 @@ mod tests {
             let rule = GaussLegendre::new(30.try_into().unwrap());
             let sum = rule.integrate(psi1, psi2, column);
             let modulus = rule.integrate(psi1, psi2, |psi| column(psi).abs());
-            let ring = Ring::new(s, psi1, psi2).from_station_m(dh);
+            let ring = Ring::new(s, psi1, psi2).outwards_m(0.0, dh);
             prop_assert!((ring - sum).abs() <= 3e-13 * modulus, "{ring:e} {sum:e} of {modulus:e}");
         }
     }

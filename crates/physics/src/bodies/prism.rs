@@ -53,7 +53,7 @@ fn one_side(x: [f64; 2], y: [f64; 2], z: [f64; 2]) -> f64 {
     let sum = (terms[0] + terms[1]) + (terms[2] + terms[3]);
     let size: f64 = terms.iter().map(|t| t.abs()).sum();
     // a footprint around or touching the vertical through the station has terms of one sign, so halving ends
-    if !(sum.abs() < WELL_CONDITIONED * size) {
+    if sum.is_nan() || sum.abs() >= WELL_CONDITIONED * size {
         return sum;
     }
     let middle = [0.5 * (x[0] + x[1]), 0.5 * (y[0] + y[1])];
@@ -102,4 +102,100 @@ fn far(x: [f64; 2], y: [f64; 2], [z0, z1]: [f64; 2]) -> f64 {
         })
     });
     (z1 - z0) * (z1 + z0) * sum
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use approx::assert_relative_eq;
+    use proptest::prelude::*;
+
+    /// The closed form as its authors print it, one term a corner.
+    fn eight_corners(x: [f64; 2], y: [f64; 2], z: [f64; 2]) -> f64 {
+        let mut sum = 0.0;
+        for (i, j, k) in (0..8).map(|n| (n & 1, n >> 1 & 1, n >> 2)) {
+            let (x, y, z) = (x[i], y[j], z[k]);
+            let r = (x * x + y * y + z * z).sqrt();
+            let term = x * (y + r).ln() + y * (x + r).ln() - z * (x * y / (z * r)).atan();
+            sum += if (i + j + k) % 2 == 1 { term } else { -term };
+        }
+        sum
+    }
+
+    #[test]
+    fn corners_as_published() {
+        for (x, y, z) in [
+            ([-3.0, 5.0], [-2.0, 4.0], [-7.0, -1.0]),
+            ([3.0, 5.0], [2.0, 4.0], [1.0, 6.0]),
+            ([-9.0, -4.0], [1.0, 4.0], [-2.0, 6.0]),
+        ] {
+            assert_relative_eq!(
+                prism_m(x, y, z),
+                eight_corners(x, y, z),
+                max_relative = 1e-12
+            );
+        }
+    }
+
+    #[test]
+    fn nan_stays_nan() {
+        for n in 0..6 {
+            let mut limits = [1.0, 2.0, 1.0, 2.0, 1.0, 2.0];
+            limits[n] = f64::NAN;
+            let [x0, x1, y0, y1, z0, z1] = limits;
+            assert!(prism_m([x0, x1], [y0, y1], [z0, z1]).is_nan(), "limit {n}");
+        }
+    }
+
+    #[test]
+    fn nothing_attracts_nothing() {
+        assert_eq!(prism_m([0.0, 0.0], [-1.0, 1.0], [-1.0, 0.0]), 0.0);
+        assert_eq!(prism_m([5.0, 5.0], [-1.0, 1.0], [-1.0, 1.0]), 0.0);
+        assert_eq!(prism_m([5.0, 6.0], [-1.0, 1.0], [2.0, 2.0]), 0.0);
+        assert_eq!(prism_m([5.0, 6.0], [-1.0, 1.0], [-3.0, 3.0]), 0.0);
+    }
+
+    fn signed(log: f64, up: bool) -> f64 {
+        10f64.powf(log) * if up { 1.0 } else { -1.0 }
+    }
+
+    proptest! {
+        /// Two parts make the whole, for slivers, needles, plates and dust from under the station out to 100 km.
+        #[test]
+        fn parts_join(
+            log in [-4.0..5.0f64, -4.0..5.0f64, -4.0..4.0f64], negative in any::<[bool; 3]>(),
+            log_size in [-4.0..4.0f64, -4.0..4.0f64, -4.0..4.0f64], cut in 0.1..0.9f64, axis in 0..3usize,
+        ) {
+            let limits: [[f64; 2]; 3] = std::array::from_fn(|i| {
+                let from = signed(log[i], negative[i]);
+                [from, from + 10f64.powf(log_size[i])]
+            });
+            let [low, high] = limits[axis];
+            let middle = low + cut * (high - low);
+            let (mut a, mut b) = (limits, limits);
+            a[axis][1] = middle;
+            b[axis][0] = middle;
+            let of = |l: [[f64; 2]; 3]| prism_m(l[0], l[1], l[2]);
+            let (a, b, whole) = (of(a), of(b), of(limits));
+            // a body on both sides of station level: what its two sides amount to
+            let [x, y, z] = limits;
+            let size = prism_m(x, y, [z[0].min(0.0), z[1].min(0.0)]).abs() + prism_m(x, y, [z[0].max(0.0), z[1].max(0.0)]).abs();
+            prop_assert!((a + b - whole).abs() <= 2e-12 * size, "{a:e} + {b:e} is not {whole:e}");
+        }
+
+        /// Far away every prism is a point: relative difference of the order (size/distance)^2.
+        #[test]
+        fn far_prism_is_a_point(
+            distance in 1e4..2e5f64, azimuth in 0.0..6.3f64, size in [1e-3..100.0f64, 1e-3..100.0f64, 1e-3..100.0f64], depth in 1e2..3e3f64,
+        ) {
+            let (x, y, z) = (distance * azimuth.cos(), distance * azimuth.sin(), -depth);
+            let around = |c: f64, s: f64| [c - 0.5 * s, c + 0.5 * s];
+            let found = prism_m(around(x, size[0]), around(y, size[1]), around(z, size[2]));
+            let r2 = x * x + y * y + z * z;
+            // the size that floating point holds
+            let volume: f64 = [(x, size[0]), (y, size[1]), (z, size[2])].iter().map(|&(c, s)| around(c, s)[1] - around(c, s)[0]).product();
+            let largest = size[0].max(size[1]).max(size[2]);
+            prop_assert!((found * r2 * r2.sqrt() / (volume * depth) - 1.0).abs() <= 3.0 * largest * largest / r2 + 1e-8);
+        }
+    }
 }
