@@ -1,0 +1,157 @@
+//! `hillpull effect`: from the checked configuration to the written table.
+//!
+//! What can fail early fails early: options, station table, output and DEMs are all checked before the first
+//! station is computed, and the output is written in one go at the end.
+
+use crate::args::EffectArgs;
+use crate::config::{RunConfig, from_survey};
+use crate::exit::{Exit, Stop};
+use crate::interrupt;
+use crate::load;
+use crate::messages::Messages;
+use crate::progress::Progress;
+use crate::summary;
+use hillpull_relief::Relief;
+use hillpull_survey::{
+    Outcome, OutputTarget, Provenance, StationTable, join, read_stations, write_effects,
+};
+use std::path::PathBuf;
+use std::sync::atomic::{AtomicBool, Ordering};
+use std::time::Instant;
+
+/// Runs the command.
+pub(crate) fn run(args: &EffectArgs, messages: Messages) -> Result<Exit, Stop> {
+    let started = Instant::now();
+    let config = RunConfig::new(args)?;
+    let stop = interrupt::listen().map_err(Stop::failure)?;
+    let progress = Progress::new(args.quiet);
+
+    let target = OutputTarget::from_path(&config.out).map_err(from_survey)?;
+    let table = read_stations(&config.stations, &config.table).map_err(from_survey)?;
+    for note in table.notes() {
+        messages.warning(note);
+    }
+    target
+        .check(&table, &config.settings, &inputs(&config))
+        .map_err(from_survey)?;
+
+    let pool = rayon::ThreadPoolBuilder::new()
+        .num_threads(config.threads)
+        .build()
+        .map_err(|e| {
+            Stop::failure(
+                anyhow::Error::new(e).context(format!("start {} threads", config.threads)),
+            )
+            .hint("give fewer --threads")
+        })?;
+    let stations = table.engine_stations(config.ground);
+    let grids = load::grids(&config, &stations.stations, progress, messages, stop)?;
+    let provenance = provenance(&config, &target)?;
+    let relief = {
+        let bar = progress.working("building the relief");
+        let relief = pool.install(|| Relief::build(grids));
+        bar.finish_and_clear();
+        relief
+    };
+    go_on(stop)?;
+    let loading = started.elapsed();
+
+    let started = Instant::now();
+    let bar = progress.stations(stations.stations.len());
+    let results = pool.install(|| {
+        let done = |count: usize| bar.inc(count as u64);
+        hillpull_engine::effects(&relief, &stations.stations, &config.settings, &done, stop)
+    });
+    bar.finish_and_clear();
+    go_on(stop)?;
+    let computing = started.elapsed();
+
+    let outcomes = join(&table, results, &config.settings, config.ground);
+    write(&target, &table, &outcomes, &config, &provenance)?;
+    let written = match &target {
+        OutputTarget::Stdout => "standard output".to_owned(),
+        OutputTarget::Csv(path) | OutputTarget::Gpkg(path) => path.display().to_string(),
+    };
+    let run = summary::Run {
+        table: &table,
+        outcomes: &outcomes,
+        settings: &config.settings,
+        ground: config.ground,
+        loading,
+        computing,
+        written: &written,
+    };
+    messages.note(run.text());
+    let complete = outcomes.iter().all(|o| o.effect.is_some());
+    Ok(if complete {
+        Exit::Done
+    } else {
+        Exit::SomeStationsWithout
+    })
+}
+
+/// Every file the run reads.
+fn inputs(config: &RunConfig) -> Vec<PathBuf> {
+    config
+        .survey
+        .iter()
+        .chain([&config.stations])
+        .chain(&config.dems)
+        .cloned()
+        .collect()
+}
+
+/// Stops here if the user asked to.
+pub(crate) fn go_on(stop: &AtomicBool) -> Result<(), Stop> {
+    if stop.load(Ordering::SeqCst) {
+        Err(Stop::interrupted())
+    } else {
+        Ok(())
+    }
+}
+
+/// Options and checksums for the output. Standard output has no room for them, so nothing is read for it.
+fn provenance(config: &RunConfig, target: &OutputTarget) -> Result<Provenance, Stop> {
+    let mut provenance =
+        Provenance::new(env!("CARGO_PKG_VERSION"), &config.settings, config.ground);
+    for (name, value) in config.options() {
+        provenance.option(name, value);
+    }
+    if *target != OutputTarget::Stdout {
+        if let Some(path) = &config.survey {
+            provenance.input("survey", path).map_err(from_survey)?;
+        }
+        provenance
+            .input("stations", &config.stations)
+            .map_err(from_survey)?;
+        for path in &config.dems {
+            provenance.input("dem", path).map_err(from_survey)?;
+        }
+    }
+    Ok(provenance)
+}
+
+fn write(
+    target: &OutputTarget,
+    table: &StationTable,
+    outcomes: &[Outcome],
+    config: &RunConfig,
+    provenance: &Provenance,
+) -> Result<(), Stop> {
+    let mut stdout = std::io::stdout().lock();
+    write_effects(
+        target,
+        &mut stdout,
+        table,
+        outcomes,
+        &config.settings,
+        provenance,
+    )
+    .map_err(|error| {
+        let hint = error.hint();
+        Stop {
+            hint,
+            ..Stop::failure(error)
+        }
+    })
+}
