@@ -1,1 +1,5 @@
 //! Shared fixtures of the integration tests.
+
+pub mod published;
+
+pub mod program;

@@ -45,13 +45,14 @@ pub(crate) fn run(args: &EffectArgs, messages: Messages) -> Result<Exit, Stop> {
             .hint("give fewer --threads")
         })?;
     let stations = table.engine_stations(config.ground);
-    let grids = load::grids(&config, &stations.stations, progress, messages, stop)?;
+    let grids =
+        pool.install(|| load::grids(&config, &stations.stations, progress, messages, stop))?;
     let provenance = provenance(&config, &target)?;
     let relief = {
         let bar = progress.working("building the relief");
         let relief = pool.install(|| Relief::build(grids));
         bar.finish_and_clear();
-        relief
+        relief.map_err(load::from_relief)?
     };
     go_on(stop)?;
     let loading = started.elapsed();

@@ -1,0 +1,244 @@
+//! The main job as a user runs it.
+#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
+
+use hillpull_tests::program::{Dem, Folder, HILL_RUN, Ran, STATIONS};
+use insta::assert_snapshot;
+
+/// Runs and expects a complete result.
+fn done(folder: &Folder, words: &str) -> Ran {
+    let ran = folder.run(words);
+    assert_eq!(ran.code, Some(0), "{}", ran.stderr);
+    ran
+}
+
+/// The column of a CSV text.
+fn column(text: &str, name: &str) -> Vec<String> {
+    let mut table = csv::Reader::from_reader(text.as_bytes());
+    let at = table
+        .headers()
+        .unwrap()
+        .iter()
+        .position(|h| h == name)
+        .unwrap_or_else(|| panic!("no column {name}"));
+    table.records().map(|r| r.unwrap()[at].to_owned()).collect()
+}
+
+fn effects_mgal(text: &str) -> Vec<f64> {
+    column(text, "terrain_effect_mgal")
+        .iter()
+        .map(|v| v.parse().unwrap())
+        .collect()
+}
+
+#[test]
+fn the_users_columns_come_first_and_unchanged() {
+    let folder = Folder::with_survey();
+    done(&folder, HILL_RUN);
+    let out = folder.read("out.csv");
+    for (input, output) in STATIONS.lines().zip(out.lines()) {
+        assert!(output.starts_with(input), "{output}");
+    }
+    assert_eq!(out.lines().count(), STATIONS.lines().count());
+    assert_snapshot!(out.lines().next().unwrap(), @"");
+    assert_eq!(folder.files(), ["dem.tif", "out.csv", "stations.csv"]);
+}
+
+#[test]
+fn a_hill_lowers_gravity_on_and_beside_it() {
+    let folder = Folder::with_survey();
+    done(&folder, HILL_RUN);
+    let out = folder.read("out.csv");
+    let effects = effects_mgal(&out);
+    // Less than the infinite plate of the summit's 300 m, 2 pi G rho h = 33.6 mGal (Bouguer plate), and not nothing.
+    assert!(
+        effects.iter().all(|e| *e < -0.01 && *e > -33.6),
+        "{effects:?}"
+    );
+    for (zone, other) in column(&out, "zone_0_230_m_mgal")
+        .iter()
+        .zip(column(&out, "zone_230_800_m_mgal"))
+        .enumerate()
+        .map(|(i, (a, b))| {
+            (
+                effects[i],
+                a.parse::<f64>().unwrap() + b.parse::<f64>().unwrap(),
+            )
+        })
+    {
+        assert!(
+            (zone - other).abs() < 2.1e-4,
+            "the zones add up to the total: {zone} {other}"
+        );
+    }
+}
+
+#[test]
+fn the_summary() {
+    let folder = Folder::with_survey();
+    let ran = done(&folder, HILL_RUN);
+    assert_eq!(ran.stdout, "");
+    assert_snapshot!(steady(&ran.stderr), @"");
+}
+
+#[test]
+fn quiet_is_silent_and_changes_no_result() {
+    let folder = Folder::with_survey();
+    done(&folder, HILL_RUN);
+    let loud = folder.read("out.csv");
+    let ran = done(&folder, &format!("{HILL_RUN} --quiet"));
+    assert_eq!((ran.stdout.as_str(), ran.stderr.as_str()), ("", ""));
+    assert_eq!(folder.read("out.csv"), loud);
+}
+
+#[test]
+fn standard_output_is_the_table_and_nothing_else() {
+    let folder = Folder::with_survey();
+    done(&folder, HILL_RUN);
+    let before = folder.files();
+    let ran = done(&folder, &HILL_RUN.replace("out.csv", "-"));
+    assert_eq!(ran.stdout, folder.read("out.csv"));
+    assert_eq!(folder.files(), before);
+}
+
+#[test]
+fn the_number_of_threads_changes_no_byte() {
+    let folder = Folder::with_survey();
+    let with = |threads: usize| {
+        done(
+            &folder,
+            &format!("{} --threads {threads}", HILL_RUN.replace("out.csv", "-")),
+        )
+        .stdout
+    };
+    let one = with(1);
+    assert_eq!(with(2), one);
+    assert_eq!(with(7), one);
+}
+
+#[test]
+fn the_order_of_the_stations_changes_no_result() {
+    let folder = Folder::with_survey();
+    let words = HILL_RUN.replace("out.csv", "-");
+    let mut forward: Vec<String> = done(&folder, &words)
+        .stdout
+        .lines()
+        .map(str::to_owned)
+        .collect();
+    let mut rows: Vec<&str> = STATIONS.lines().collect();
+    rows[1..].reverse();
+    folder.write("stations.csv", &(rows.join("\n") + "\n"));
+    let backward: Vec<String> = done(&folder, &words)
+        .stdout
+        .lines()
+        .map(str::to_owned)
+        .collect();
+    forward[1..].reverse();
+    assert_eq!(forward, backward);
+}
+
+#[test]
+fn the_survey_file_says_the_same_and_the_command_line_wins() {
+    let folder = Folder::with_survey();
+    let by_flags = done(
+        &folder,
+        &HILL_RUN.replace("out.csv", "- --density 2000 --ground given"),
+    )
+    .stdout;
+    folder.write(
+        "survey.toml",
+        r#"
+stations = "stations.csv"
+dem = ["dem.tif"]
+out = "-"
+crs = "EPSG:32632"
+outer = 800
+zones = [230]
+density = 2000
+ground = "given"
+"#,
+    );
+    assert_eq!(done(&folder, "effect survey.toml").stdout, by_flags);
+    let denser = done(&folder, "effect survey.toml --density 3000 --zones 100").stdout;
+    assert_snapshot!(denser.lines().next().unwrap(), @"");
+    for (light, dense) in effects_mgal(&by_flags).iter().zip(effects_mgal(&denser)) {
+        // Effects are linear in density; figures are rounded to 0.1 µGal and computed to 1 µGal.
+        assert!((dense - 1.5 * light).abs() < 3e-3, "{light} {dense}");
+    }
+    let elsewhere = done(&folder, "effect survey.toml --out other.csv");
+    assert_eq!(elsewhere.stdout, "");
+    assert_eq!(folder.read("other.csv"), by_flags);
+}
+
+#[test]
+fn paths_in_the_survey_file_start_at_its_folder() {
+    let folder = Folder::new();
+    std::fs::create_dir(folder.path("survey")).unwrap();
+    folder.dem("survey/dem.tif", &Dem::hill());
+    folder.write("survey/stations.csv", STATIONS);
+    folder.write(
+        "survey/survey.toml",
+        "stations = \"stations.csv\"\ndem = \"dem.tif\"\nout = \"out.csv\"\ncrs = \"EPSG:32632\"\nouter = 800\n",
+    );
+    done(&folder, "effect survey/survey.toml");
+    assert_eq!(effects_mgal(&folder.read("survey/out.csv")).len(), 3);
+    assert_eq!(folder.files(), ["survey"]);
+}
+
+#[test]
+fn default_zone_edges_beyond_the_outer_radius_are_left_out() {
+    let folder = Folder::with_survey();
+    let out = done(
+        &folder,
+        &HILL_RUN.replace("--zones 230", "").replace("out.csv", "-"),
+    )
+    .stdout;
+    assert_snapshot!(out.lines().next().unwrap(), @"");
+}
+
+#[test]
+fn the_finer_dem_counts_where_it_covers() {
+    let folder = Folder::with_survey();
+    // 10 m higher everywhere: the misfit tells which DEM lies under a station.
+    folder.dem("far.tif", &Dem::hill().change(|_, _, h| h + 10.0));
+    let heights = |words: &str| column(&done(&folder, words).stdout, "dem_height_m");
+    let words = HILL_RUN.replace("out.csv", "-");
+    assert_eq!(heights(&format!("{words} --dem far.tif")), heights(&words));
+    assert_ne!(
+        heights(&words.replace("dem.tif", "far.tif --dem dem.tif")),
+        heights(&words)
+    );
+}
+
+#[test]
+fn geographic_stations_and_named_columns() {
+    let folder = Folder::with_survey();
+    // The summit station in degrees (PROJ, EPSG:32632 to EPSG:4326), under names nobody would guess.
+    folder.write(
+        "stations.csv",
+        "punkt;a;b;c\ntop;10.314364802;46.946209466;1300\n",
+    );
+    let words = HILL_RUN
+        .replace("EPSG:32632", "EPSG:4326")
+        .replace("out.csv", "-");
+    let out = done(
+        &folder,
+        &format!("{words} --id punkt --x a --y b --height c"),
+    )
+    .stdout;
+    assert_snapshot!(out.lines().next().unwrap(), @"");
+}
+
+/// The summary without times.
+fn steady(stderr: &str) -> String {
+    stderr
+        .lines()
+        .map(|line| {
+            if line.starts_with("time ") {
+                "time      [...]"
+            } else {
+                line
+            }
+        })
+        .collect::<Vec<_>>()
+        .join("\n")
+}

@@ -1,0 +1,66 @@
+//! A table of a million rows: refused fast where it is wrong, computed where it is right.
+#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
+
+use hillpull_tests::program::{Dem, Folder, refused};
+use insta::assert_snapshot;
+use std::fmt::Write;
+
+const ROWS: usize = 1_000_000;
+const RUN: &str = "effect --stations stations.csv --crs EPSG:32632 --dem dem.tif --outer 90 --tolerance 1000 --ground given --out out.csv";
+
+/// A million stations on a slope of 4 x 4 posts, 60 m apart.
+fn million() -> (Folder, String) {
+    let folder = Folder::new();
+    folder.dem(
+        "dem.tif",
+        &Dem::new(
+            Some(32632),
+            (600_000.0, 5_200_240.0),
+            60.0,
+            (4, 4),
+            |col, _| 900.0 + 3.0 * col as f64,
+        ),
+    );
+    let mut table = String::with_capacity(40 * ROWS);
+    table.push_str("station,easting,northing,height\n");
+    for i in 0..ROWS {
+        let (east, north) = (
+            600_080.0 + 0.08 * (i % 1000) as f64,
+            5_200_080.0 + 0.08 * (i / 1000) as f64,
+        );
+        writeln!(table, "S{i},{east:.2},{north:.2},905").unwrap();
+    }
+    (folder, table)
+}
+
+#[test]
+fn the_last_row_repeats_a_name() {
+    let (folder, mut table) = million();
+    table.push_str("S17,600100,5200100,905\n");
+    folder.write("stations.csv", &table);
+    assert_snapshot!(refused(&folder, RUN), @"");
+}
+
+#[test]
+fn the_last_row_is_ragged() {
+    let (folder, mut table) = million();
+    table.push_str("S1000000,600100,5200100\n");
+    folder.write("stations.csv", &table);
+    assert_snapshot!(refused(&folder, RUN), @"");
+}
+
+#[test]
+fn all_rows_have_a_result() {
+    let (folder, table) = million();
+    folder.write("stations.csv", &table);
+    let ran = folder.run(RUN);
+    assert_eq!(ran.code, Some(0), "{}", ran.stderr);
+    let out = folder.read("out.csv");
+    assert_eq!(out.lines().count(), ROWS + 1);
+    assert!(
+        out.lines()
+            .last()
+            .unwrap()
+            .starts_with("S999999,600159.92,5200159.92,905,")
+    );
+}
