@@ -18,4 +18,5 @@ sources! {
     CARLSON_1995 = "Carlson B. C., 1995, Numerical computation of real or complex elliptic integrals, Numerical Algorithms 10, 13-26.";
     ABRAMOWITZ_STEGUN_1964 = "Abramowitz M., Stegun I. A. (eds), 1964, Handbook of mathematical functions, National Bureau of Standards Applied Mathematics Series 55.";
     BOWRING_1976 = "Bowring B. R., 1976, Transformation from spatial to geographical coordinates, Survey Review 23, 323-327.";
+    BADOIU_CLARKSON_2003 = "Badoiu M., Clarkson K. L., 2003, Smaller core-sets for balls, Proceedings of the 14th ACM-SIAM Symposium on Discrete Algorithms, 801-802.";
 }

@@ -1,0 +1,443 @@
+//! Heights of a window into one vector of f32, in bands of rows.
+
+use std::ops::Range;
+use std::sync::atomic::{AtomicBool, Ordering};
+
+use gdal::raster::{GdalDataType, RasterBand};
+use rayon::prelude::*;
+
+use super::window::Window;
+use super::{gdal_text, unit};
+use crate::error::Fault;
+
+/// No ground is farther from the datum than this, metres (highest 8849 m, deepest about -10 935 m; common knowledge,
+/// no source).
+const LIMIT_M: f32 = 12_000.0;
+/// Posts in one band of rows: large enough for GDAL to decode blocks side by side, small enough to stop soon.
+const BAND_POSTS: usize = 8 << 20;
+/// Values beyond this are a nodata value written with few digits, if the nodata value is beyond it too.
+const HUGE: f64 = 1e30;
+
+/// How stored values become heights.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(super) struct Decoding {
+    nodata: Nodata,
+    scale: f64,
+    offset: f64,
+    metres: f64,
+    /// Whether f32 would lose digits before scale and offset are applied.
+    wide: bool,
+    /// Whether a mask band says which posts are valid.
+    masked: bool,
+}
+
+#[derive(Clone, Copy, Debug, PartialEq)]
+enum Nodata {
+    /// None, or NaN, which needs no test.
+    None,
+    /// This value.
+    Value(f64),
+    /// Anything above 1e30, or below -1e30.
+    Above,
+    /// Anything below -1e30.
+    Below,
+}
+
+impl Decoding {
+    /// Of `band`; scale and offset are those `meaning` states, `metres` is the unit of its heights.
+    pub(super) fn of(
+        band: &RasterBand<'_>,
+        meaning: &RasterBand<'_>,
+        metres: f64,
+    ) -> Result<Self, Fault> {
+        let stored = band.band_type();
+        let nodata = match stored {
+            GdalDataType::Int64 => band.no_data_value_i64().map(|v| v as f64),
+            GdalDataType::UInt64 => band.no_data_value_u64().map(|v| v as f64),
+            _ => band.no_data_value(),
+        };
+        let nodata = match nodata {
+            Some(value) if value > HUGE => Nodata::Above,
+            Some(value) if value < -HUGE => Nodata::Below,
+            Some(value) if !value.is_nan() => Nodata::Value(value),
+            _ => Nodata::None,
+        };
+        let (scale, offset) = (
+            meaning.scale().unwrap_or(1.0),
+            meaning.offset().unwrap_or(0.0),
+        );
+        if scale == 0.0 || !scale.is_finite() || !offset.is_finite() {
+            return Err(Fault::BadScale { scale, offset });
+        }
+        let exact_in_f32 = matches!(
+            stored,
+            GdalDataType::UInt8
+                | GdalDataType::UInt16
+                | GdalDataType::Int16
+                | GdalDataType::Float32
+        );
+        // a stated nodata value is part of the mask already, unless the mask is a band of its own
+        let masked = band
+            .mask_flags()
+            .is_ok_and(|flags| flags.is_per_dataset() || flags.is_alpha());
+        Ok(Self {
+            nodata,
+            scale,
+            offset,
+            metres,
+            wide: !exact_in_f32 && (scale, offset) != (1.0, 0.0),
+            masked,
+        })
+    }
+
+    fn is_plain(&self) -> bool {
+        (self.scale, self.offset, self.metres) == (1.0, 0.0, 1.0)
+    }
+
+    /// Height in metres of a stored value that is not nodata.
+    fn height_m(&self, stored: f64) -> f32 {
+        ((stored * self.scale + self.offset) * self.metres) as f32
+    }
+
+    /// Stored values to heights, in place; true if one is absurd. Sound heights and voids only if not.
+    fn finish(&self, values: &mut [f32]) -> bool {
+        match self.nodata {
+            Nodata::None => self.finish_with(values, |_| false),
+            Nodata::Above => self.finish_with(values, |v| v > HUGE as f32),
+            Nodata::Below => self.finish_with(values, |v| v < -HUGE as f32),
+            Nodata::Value(nodata) => {
+                let nodata = nodata as f32;
+                self.finish_with(values, |v| v == nodata)
+            }
+        }
+    }
+
+    fn finish_with(&self, values: &mut [f32], is_void: impl Fn(f32) -> bool + Sync) -> bool {
+        let plain = self.is_plain();
+        values
+            .par_chunks_mut(1 << 16)
+            .map(|chunk| {
+                // no branches, so that the loops vectorise
+                let mut absurd = false;
+                if plain {
+                    for v in chunk {
+                        *v = if is_void(*v) { f32::NAN } else { *v };
+                        absurd |= v.abs() > LIMIT_M;
+                    }
+                } else {
+                    for v in chunk {
+                        *v = if is_void(*v) {
+                            f32::NAN
+                        } else {
+                            self.height_m(f64::from(*v))
+                        };
+                        absurd |= v.abs() > LIMIT_M;
+                    }
+                }
+                absurd
+            })
+            .reduce(|| false, |a, b| a | b)
+    }
+
+    fn is_void_f64(&self, value: f64) -> bool {
+        match self.nodata {
+            Nodata::None => value.is_nan(),
+            Nodata::Above => value > HUGE,
+            Nodata::Below => value < -HUGE,
+            Nodata::Value(nodata) => value == nodata,
+        }
+    }
+}
+
+/// What the reader tells while it reads, and what can stop it.
+#[derive(Clone, Copy)]
+pub(super) struct Watch<'a> {
+    pub(super) progress: Option<&'a dyn Fn(f64)>,
+    pub(super) stop: Option<&'a AtomicBool>,
+}
+
+/// Heights in metres of a window, row-major, NaN for voids.
+///
+/// `ring` as in [`super::window::Extent`].
+pub(super) fn read(
+    band: &RasterBand<'_>,
+    window: Window,
+    ring: Option<usize>,
+    decoding: &Decoding,
+    watch: Watch<'_>,
+) -> Result<Vec<f32>, Fault> {
+    let mut heights = allocate(window.rows, window.cols)?;
+    let pieces = pieces(window, ring);
+    let (_, block_rows) = band.block_size();
+    let mut scratch = Scratch::default();
+    let mut done = 0;
+    for rows in row_bands(window, block_rows.max(1)) {
+        if watch.stop.is_some_and(|stop| stop.load(Ordering::Relaxed)) {
+            return Err(Fault::Stopped);
+        }
+        let count = rows.len();
+        let part = &mut heights[done * window.cols..(done + count) * window.cols];
+        let absurd = if decoding.wide {
+            scratch.read_wide(band, &rows, &pieces, window.cols, decoding, part)?
+        } else {
+            scratch.read_f32(band, &rows, &pieces, window.cols, part)?;
+            decoding.finish(part)
+        };
+        if decoding.masked {
+            scratch.apply_mask(band, &rows, &pieces, window.cols, part)?;
+        }
+        // a masked post may hold anything
+        if absurd && let Some(at) = part.iter().position(|v| v.abs() > LIMIT_M) {
+            let (row, col) = (rows.start + at / window.cols, at % window.cols);
+            let col = (window.first_col + col) % ring.unwrap_or(usize::MAX);
+            return Err(absurd_height(band, row, col, part[at]));
+        }
+        done += count;
+        if let Some(progress) = watch.progress {
+            progress(done as f64 / window.rows as f64);
+        }
+    }
+    Ok(heights)
+}
+
+/// Zeroed memory that is not touched yet, or an error if there is not enough.
+fn allocate(rows: usize, cols: usize) -> Result<Vec<f32>, Fault> {
+    let too_large = Fault::TooLarge { rows, cols };
+    let Some(posts) = rows.checked_mul(cols) else {
+        return Err(too_large);
+    };
+    // asked and given back: `vec!` would end the program instead of saying no
+    if Vec::<f32>::new().try_reserve_exact(posts).is_err() {
+        return Err(too_large);
+    }
+    Ok(vec![0.0; posts])
+}
+
+/// Rows to read at a time: whole rows of blocks.
+fn row_bands(window: Window, block_rows: usize) -> impl Iterator<Item = Range<usize>> {
+    let wanted = (BAND_POSTS / window.cols).max(1);
+    let step = wanted.div_ceil(block_rows) * block_rows;
+    let end = window.first_row + window.rows;
+    let mut start = window.first_row;
+    std::iter::from_fn(move || {
+        let stop = ((start / step + 1) * step).min(end);
+        let band = start..stop;
+        start = stop;
+        (!band.is_empty()).then_some(band)
+    })
+}
+
+/// Runs of columns that lie side by side in the file: where in the window, where in the file, how many.
+fn pieces(window: Window, ring: Option<usize>) -> Vec<[usize; 3]> {
+    let Some(ring) = ring else {
+        return vec![[0, window.first_col, window.cols]];
+    };
+    let mut pieces = Vec::new();
+    let mut done = 0;
+    while done < window.cols {
+        let from = (window.first_col + done) % ring;
+        let len = (ring - from).min(window.cols - done);
+        pieces.push([done, from, len]);
+        done += len;
+    }
+    pieces
+}
+
+/// Memory for one band of rows that cannot be read straight into its place.
+#[derive(Default)]
+struct Scratch {
+    narrow: Vec<f32>,
+    wide: Vec<f64>,
+    mask: Vec<u8>,
+}
+
+impl Scratch {
+    fn read_f32(
+        &mut self,
+        band: &RasterBand<'_>,
+        rows: &Range<usize>,
+        pieces: &[[usize; 3]],
+        cols: usize,
+        part: &mut [f32],
+    ) -> Result<(), Fault> {
+        if let &[[0, from, len]] = pieces {
+            return fill(band, rows, from, len, part);
+        }
+        for &[to, from, len] in pieces {
+            self.narrow.resize(rows.len() * len, 0.0);
+            fill(band, rows, from, len, &mut self.narrow)?;
+            for (out, row) in part.chunks_mut(cols).zip(self.narrow.chunks(len)) {
+                out[to..to + len].copy_from_slice(row);
+            }
+        }
+        Ok(())
+    }
+
+    /// Values with more digits than f32 has, brought to metres before they are rounded. True if one is absurd.
+    fn read_wide(
+        &mut self,
+        band: &RasterBand<'_>,
+        rows: &Range<usize>,
+        pieces: &[[usize; 3]],
+        cols: usize,
+        decoding: &Decoding,
+        part: &mut [f32],
+    ) -> Result<bool, Fault> {
+        let mut absurd = false;
+        for &[to, from, len] in pieces {
+            self.wide.resize(rows.len() * len, 0.0);
+            fill(band, rows, from, len, &mut self.wide)?;
+            for (out, row) in part.chunks_mut(cols).zip(self.wide.chunks(len)) {
+                for (out, &stored) in out[to..to + len].iter_mut().zip(row) {
+                    *out = if decoding.is_void_f64(stored) {
+                        f32::NAN
+                    } else {
+                        decoding.height_m(stored)
+                    };
+                    absurd |= out.abs() > LIMIT_M;
+                }
+            }
+        }
+        Ok(absurd)
+    }
+
+    fn apply_mask(
+        &mut self,
+        band: &RasterBand<'_>,
+        rows: &Range<usize>,
+        pieces: &[[usize; 3]],
+        cols: usize,
+        part: &mut [f32],
+    ) -> Result<(), Fault> {
+        let mask = band.open_mask_band().map_err(|error| unreadable(&error))?;
+        for &[to, from, len] in pieces {
+            self.mask.resize(rows.len() * len, 0);
+            fill(&mask, rows, from, len, &mut self.mask)?;
+            for (out, row) in part.chunks_mut(cols).zip(self.mask.chunks(len)) {
+                for (out, &valid) in out[to..to + len].iter_mut().zip(row) {
+                    *out = if valid == 0 { f32::NAN } else { *out };
+                }
+            }
+        }
+        Ok(())
+    }
+}
+
+/// Reads `rows` x `len` values from column `from` on.
+fn fill<T: Copy + gdal::raster::GdalType>(
+    band: &RasterBand<'_>,
+    rows: &Range<usize>,
+    from: usize,
+    len: usize,
+    out: &mut [T],
+) -> Result<(), Fault> {
+    let size = (len, rows.len());
+    // GDAL has checked that the raster's size fits its 32-bit numbers
+    band.read_into_slice((from as isize, rows.start as isize), size, size, out, None)
+        .map_err(|error| unreadable(&error))
+}
+
+fn unreadable(error: &gdal::errors::GdalError) -> Fault {
+    Fault::Unreadable {
+        detail: gdal_text(error),
+    }
+}
+
+/// The error for a height that cannot be, with the value as stored.
+fn absurd_height(band: &RasterBand<'_>, row: usize, col: usize, height_m: f32) -> Fault {
+    let mut stored = [0.0_f64];
+    let value = match fill(band, &(row..row + 1), col, 1, &mut stored) {
+        Ok(()) => stored[0],
+        Err(_) => f64::from(height_m),
+    };
+    Fault::AbsurdHeight {
+        row,
+        col,
+        value,
+        height_m: f64::from(height_m),
+        limit_m: f64::from(LIMIT_M),
+    }
+}
+
+/// Unit of the heights: its name and the metres in it, from the band or else from the vertical CRS.
+pub(super) fn unit_of(
+    band_unit: &str,
+    vertical: Option<&(String, f64)>,
+) -> Result<(String, f64), Fault> {
+    if band_unit.trim().is_empty() {
+        return Ok(vertical.map_or_else(|| ("m".to_owned(), 1.0), Clone::clone));
+    }
+    let Some(metres) = unit::metres_in(band_unit) else {
+        return Err(Fault::UnknownUnit {
+            unit: band_unit.to_owned(),
+        });
+    };
+    if let Some((crs_unit, crs_metres)) = vertical
+        && (crs_metres / metres - 1.0).abs() > 1e-9
+    {
+        return Err(Fault::TwoUnits {
+            band_unit: band_unit.to_owned(),
+            crs_unit: crs_unit.clone(),
+        });
+    }
+    Ok((band_unit.trim().to_owned(), metres))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn row_bands_end_on_block_rows_and_miss_none() {
+        let window = Window {
+            first_row: 700,
+            rows: 5000,
+            first_col: 3,
+            cols: 10_000,
+        };
+        let bands: Vec<_> = row_bands(window, 256).collect();
+        assert_eq!(bands.first().unwrap().start, 700);
+        assert_eq!(bands.last().unwrap().end, 5700);
+        for pair in bands.windows(2) {
+            assert_eq!(pair[0].end, pair[1].start);
+            assert_eq!(pair[0].end % 256, 0);
+        }
+        assert!(bands.iter().all(|b| !b.is_empty() && b.len() <= 1024));
+    }
+
+    #[test]
+    fn pieces_go_round_the_ring() {
+        let window = Window {
+            first_row: 0,
+            rows: 1,
+            first_col: 350,
+            cols: 20,
+        };
+        assert_eq!(pieces(window, Some(360)), [[0, 350, 10], [10, 0, 10]]);
+        assert_eq!(pieces(window, None), [[0, 350, 20]]);
+        let whole = Window {
+            first_col: 0,
+            cols: 361,
+            ..window
+        };
+        assert_eq!(pieces(whole, Some(360)), [[0, 0, 360], [360, 0, 1]]);
+    }
+
+    #[test]
+    fn unit_of_band_or_vertical_crs() {
+        let feet = ("US survey foot".to_owned(), 1200.0 / 3937.0);
+        assert_eq!(unit_of("", None).unwrap(), ("m".to_owned(), 1.0));
+        assert_eq!(unit_of("", Some(&feet)).unwrap(), feet);
+        assert_eq!(unit_of("us-ft", Some(&feet)).unwrap().1, feet.1);
+        assert!(matches!(
+            unit_of("m", Some(&feet)),
+            Err(Fault::TwoUnits { .. })
+        ));
+        // the two feet differ by 2 parts in a million: 6 mm at 3000 m, and a sign that something is wrong
+        assert!(matches!(
+            unit_of("ft", Some(&feet)),
+            Err(Fault::TwoUnits { .. })
+        ));
+        assert!(matches!(unit_of("K", None), Err(Fault::UnknownUnit { .. })));
+    }
+}
