@@ -17,8 +17,9 @@ fn curvature(height_m: f64) -> f64 {
     cap(height_m) - TAU * UNIT_MGAL * height_m
 }
 
-/// Cap and Bullard B from 100 m to 5 km: closed form in high precision, checked by 2-D quadrature of Newton's integral.
-/// Beside it three approximations recalled from memory: Whitman 1991 (Geophysics 56, 1980), a quartic, and a cubic.
+/// Cap and Bullard B from 100 m to 5 km: closed form in high precision, checked by 2-D quadrature
+/// of Newton's integral. Beside it three approximations recalled from memory: Whitman 1991
+/// (Geophysics 56, 1980), a quartic, and a cubic.
 #[test]
 fn cap_to_5_km() {
     let table = rows("bullard_b.csv");
@@ -44,7 +45,8 @@ fn cap_to_5_km() {
     }
 }
 
-/// LaFehr 1991 (Geophysics 56, 1179-1184): cap = 2 pi G rho [(1 + mu) h - lambda R], constants recalled from memory.
+/// LaFehr 1991 (Geophysics 56, 1179-1184): cap = 2 pi G rho [(1 + mu) h - lambda R], constants
+/// recalled from memory.
 fn lafehr_cap_mgal(h: f64) -> f64 {
     let r = EARTH_RADIUS_M + h;
     let (eta, delta, a) = (h / r, EARTH_RADIUS_M / r, OUTER_RADIUS_M / EARTH_RADIUS_M);
@@ -71,8 +73,8 @@ fn cap_as_lafehr() {
     }
 }
 
-/// The largest Bullard B is 1.5189 mGal at 2074 m, and it changes sign at 4149.8 m (derived in high precision; "up to 1.5 mGal" in the
-/// abstract of Whitman 1991).
+/// The largest Bullard B is 1.5189 mGal at 2074 m, and it changes sign at 4149.8 m (derived in high
+/// precision; "up to 1.5 mGal" in the abstract of Whitman 1991).
 #[test]
 fn largest_curvature_and_its_change_of_sign() {
     assert!((curvature(2074.14) - 1.518_931_325).abs() < 1e-9);
@@ -80,7 +82,8 @@ fn largest_curvature_and_its_change_of_sign() {
     assert!(curvature(4149.80) > 0.0 && curvature(4149.82) < 0.0);
 }
 
-/// Antiderivative of the ring's attraction in r: closed form verified against 2-D quadrature to 12 digits, see [`ring_closed_m`].
+/// Antiderivative of the ring's attraction in r: closed form verified against 2-D quadrature to 12
+/// digits, see [`ring_closed_m`].
 fn antiderivative(s: f64, r: f64, psi: f64) -> f64 {
     let c = psi.cos();
     let l = ((r - s).powi(2) + 4.0 * r * s * (0.5 * psi).sin().powi(2)).sqrt();
@@ -93,13 +96,15 @@ fn antiderivative(s: f64, r: f64, psi: f64) -> f64 {
     r * r * l - 2.0 / 3.0 * l.powi(3) - s * c * ((r - s * c) * l + log)
 }
 
-/// (2 pi / s^2)[J(r2, psi2) - J(r1, psi2) - J(r2, psi1) + J(r1, psi1)]: exact, but its terms cancel to 1e-6 mGal.
+/// (2 pi / s^2)[J(r2, psi2) - J(r1, psi2) - J(r2, psi1) + J(r1, psi1)]: exact, but its terms cancel
+/// to 1e-6 mGal.
 fn ring_closed_m(s: f64, psi1: f64, psi2: f64, r1: f64, r2: f64) -> f64 {
     let of = |psi| antiderivative(s, r2, psi) - antiderivative(s, r1, psi);
     TAU / (s * s) * (of(psi2) - of(psi1))
 }
 
-/// Below the datum the cap is the rock missing overhead: minus the pull of the shell on a station at its base.
+/// Below the datum the cap is the rock missing overhead: minus the pull of the shell on a station
+/// at its base.
 #[test]
 fn cap_below_the_datum() {
     for depth_m in [1.0, 50.0, 430.0, 2500.0, 11_000.0] {
@@ -116,8 +121,8 @@ fn cap_below_the_datum() {
     assert_eq!(cap(0.0), 0.0);
 }
 
-/// Rings on the sphere for stations below, above and between their surfaces, rock and the contrasts of water and ice: closed form in
-/// high precision, checked by 2-D quadrature to 1e-21.
+/// Rings on the sphere for stations below, above and between their surfaces, rock and the contrasts
+/// of water and ice: closed form in high precision, checked by 2-D quadrature to 1e-21.
 #[test]
 fn spherical_rings() {
     let table = rows("spherical_rings.csv");

@@ -1,9 +1,10 @@
 //! The compartment formula against the chart of Hammer 1939 (Geophysics 4, 184-194).
 //!
-//! Radii, compartments and table are recalled from memory; only the outer radius of 13.6 miles was seen in print.
+//! Radii, compartments and table are recalled from memory; only the outer radius of 13.6 miles was
+//! seen in print.
 
 use hillpull_physics::bodies::sector::annular_sector_m;
-use hillpull_physics::constants::MGAL_PER_M_S2;
+use hillpull_physics::constants::{MGAL_PER_M_S2, OUTER_RADIUS_M};
 use hillpull_tests::published::{Row, rows};
 use std::collections::BTreeMap;
 use std::f64::consts::TAU;
@@ -56,8 +57,9 @@ impl Compartment {
     }
 }
 
-/// Every range edge of the table follows from the formula. 206 of the 232 recalled entries round to the printed figure, 21 are off
-/// by one unit in the last place, and 5 of zone E do not agree (most likely recalled wrongly): those are left out.
+/// Every range edge of the table follows from the formula. 206 of the 232 recalled entries round to
+/// the printed figure, 21 are off by one unit in the last place, and 5 of zone E do not agree (most
+/// likely recalled wrongly): those are left out.
 #[test]
 fn hammer_table() {
     let zones: BTreeMap<String, Compartment> = rows("hammer_zones.csv")
@@ -96,4 +98,12 @@ fn hammer_zones_join() {
     }
     let outer_miles = zones[zones.len() - 1].number("r_out_ft") / 5280.0;
     assert!((outer_miles - 13.6).abs() < 0.05);
+}
+
+/// Hayford and Bowie 1912, zone O: to 1 degree 29 minutes 58 seconds on a sphere of 6371.168 km
+/// (recalled from memory).
+#[test]
+fn outer_radius_is_that_of_zone_o() {
+    let angle = (1.0 + 29.0 / 60.0 + 58.0 / 3600.0_f64).to_radians();
+    assert!((angle * 6_371_168.0 - OUTER_RADIUS_M).abs() < 1.0);
 }

@@ -1,7 +1,9 @@
-//! Discs, rings and plane slopes in closed form, and the facts that every worker in the trade knows.
+//! Discs, rings and plane slopes in closed form, and the facts that every worker in the trade
+//! knows.
 //!
-//! The values are elementary closed forms in high precision, each agreeing with quadrature in another order to 1e-23.
-//! Cylinder: Heiskanen and Moritz 1967, Physical geodesy, section 3-2 (formula recalled from memory).
+//! The values are elementary closed forms in high precision, each agreeing with quadrature in
+//! another order to 1e-23. Cylinder: Heiskanen and Moritz 1967, Physical geodesy, section 3-2
+//! (formula recalled from memory).
 
 use approx::assert_relative_eq;
 use hillpull_physics::bodies::sector::{annular_sector_m, plane_slope_sector_m};
@@ -104,18 +106,21 @@ fn plane_slope_in_a_sector() {
 
 const UNIT_MGAL: f64 = G_CODATA_2018 * DENSITY_ROCK_KG_M3 * MGAL_PER_M_S2;
 
-/// Common practice, no source: a metre of infinite plate of rock is worth 0.1119 mGal (0.04193 times the density in g/cm3).
+/// Common practice, no source: a metre of infinite plate of rock is worth 0.1119 mGal (0.04193
+/// times the density in g/cm3).
 #[test]
 fn a_metre_of_plate() {
     let plate = annular_sector_m(TAU, 0.0, 1e9, -1.0, 0.0) * UNIT_MGAL;
     assert!((plate - 0.1119).abs() < 1e-4, "{plate}");
     assert!((plate / 2.670 - 0.041_93).abs() < 1e-5);
-    // Talwani 1998 (Geophysics 63, 1125-1130), first page: 0.111897 mGal/m at G = 6.67e-11, 0.1118 at 6.6635e-11
+    // Talwani 1998 (Geophysics 63, 1125-1130), first page: 0.111897 mGal/m at G = 6.67e-11, 0.1118
+    // at 6.6635e-11
     assert!((plate * 6.67e-11 / G_CODATA_2018 - 0.111_897).abs() < 5e-7);
     assert!((plate * 6.6635e-11 / G_CODATA_2018 - 0.1118).abs() < 5e-5);
 }
 
-/// Common practice, no source: terrain that differs by H beyond the distance r has an effect of about pi G rho H^2 / r.
+/// Common practice, no source: terrain that differs by H beyond the distance r has an effect of
+/// about pi G rho H^2 / r.
 #[test]
 fn far_relief() {
     let (height_m, from_m) = (1000.0, 21_944.381);
@@ -125,8 +130,8 @@ fn far_relief() {
     assert!((effect / rule - 1.0).abs() < 1e-3);
 }
 
-/// Common practice, no source: a station 1 m off its DEM is wrong by 0.112 mGal when the DEM is used right up to the station, and by
-/// 2 pi G rho [sqrt(r^2 + d^2) - r] when it is used from r on.
+/// Common practice, no source: a station 1 m off its DEM is wrong by 0.112 mGal when the DEM is
+/// used right up to the station, and by 2 pi G rho [sqrt(r^2 + d^2) - r] when it is used from r on.
 #[test]
 fn station_off_its_surface() {
     for (from_m, off_m, printed, unit) in [

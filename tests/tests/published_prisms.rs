@@ -5,8 +5,9 @@ use hillpull_physics::bodies::prism::prism_m;
 use hillpull_physics::constants::{DENSITY_ROCK_KG_M3, G_CODATA_2018, MGAL_PER_M_S2};
 use hillpull_tests::published::rows;
 
-/// 20 prisms computed with 80 digits from the closed form of Nagy 1966 (Geophysics 31, 362-371), each checked by 1-D and 3-D
-/// quadrature: near, touching, thin, tall, far. The printed formula in double precision is 9 % wrong for P14.
+/// 20 prisms computed with 80 digits from the closed form of Nagy 1966 (Geophysics 31, 362-371),
+/// each checked by 1-D and 3-D quadrature: near, touching, thin, tall, far. The printed formula in
+/// double precision is 9 % wrong for P14.
 #[test]
 fn twenty_prisms() {
     let cases = rows("prism_cases.csv");
@@ -26,8 +27,9 @@ fn twenty_prisms() {
     }
 }
 
-/// A cube of unit mass with edge 2 attracts with 0.649224... at the centre of a face and 0.419757... at a vertex (modulus), G = 1:
-/// OEIS A353769 and A353770, after Klamkin, SIAM Review 34 (1992) 120-121 and Grosjean, SIAM Review 38 (1996) 515-520.
+/// A cube of unit mass with edge 2 attracts with 0.649224... at the centre of a face and
+/// 0.419757... at a vertex (modulus), G = 1: OEIS A353769 and A353770, after Klamkin, SIAM Review
+/// 34 (1992) 120-121 and Grosjean, SIAM Review 38 (1996) 515-520.
 #[test]
 fn cube_at_face_and_vertex() {
     const FACE: f64 = 0.649_224_144_564_591_264_71;

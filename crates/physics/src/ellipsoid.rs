@@ -144,10 +144,11 @@ impl Ellipsoid {
         }
     }
 
-    /// Geodetic (longitude, latitude), radians, of a point near the surface, longitude in (-pi, pi].
+    /// Geodetic (longitude, latitude), radians, of a point near the surface, longitude in (-pi,
+    /// pi].
     ///
-    /// One step of [`BOWRING_1976`](crate::bibliography::BOWRING_1976): exact on the ellipsoid, and within 2e-13 rad
-    /// (about 1 um) for heights up to 10 km.
+    /// One step of [`BOWRING_1976`](crate::bibliography::BOWRING_1976): exact on the ellipsoid, and
+    /// within 2e-13 rad (about 1 um) for heights up to 10 km.
     #[must_use]
     pub fn lonlat_rad(&self, ecef_m: Vec3) -> (f64, f64) {
         let [x, y, z] = ecef_m;
@@ -181,7 +182,8 @@ pub fn chord_from_arc_m(arc_m: f64) -> f64 {
     2.0 * EARTH_RADIUS_M * (arc_m / (2.0 * EARTH_RADIUS_M)).sin()
 }
 
-/// Arc along the ground, metres, over a chord: 2 R asin(c / 2R), R = 6371 km. NaN for a chord above 2 R.
+/// Arc along the ground, metres, over a chord: 2 R asin(c / 2R), R = 6371 km. NaN for a chord above
+/// 2 R.
 #[must_use]
 pub fn arc_from_chord_m(chord_m: f64) -> f64 {
     2.0 * EARTH_RADIUS_M * (chord_m / (2.0 * EARTH_RADIUS_M)).asin()
@@ -196,7 +198,8 @@ mod tests {
     #[test]
     fn radii_at_equator_and_pole() {
         let e = Ellipsoid::WGS84;
-        // NIMA TR8350.2 table 3.3 (recalled from memory): e2, polar radius of curvature a^2/b, semi-minor axis b
+        // NIMA TR8350.2 table 3.3 (recalled from memory): e2, polar radius of curvature a^2/b,
+        // semi-minor axis b
         assert_relative_eq!(e.e2, 6.694_379_990_14e-3, max_relative = 1e-11);
         let pole = std::f64::consts::FRAC_PI_2;
         assert_relative_eq!(

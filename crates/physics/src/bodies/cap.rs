@@ -4,14 +4,16 @@ use super::gauss;
 use crate::constants::{EARTH_RADIUS_M, MGAL_PER_M_S2};
 use std::f64::consts::PI;
 
-/// The cap term of the topography at a station of height `height_m`, mGal, never negative: the attraction of the spherical
-/// cap between the datum (R0 = 6371 km) and station level, out to `radius_m` along the ground.
+/// The cap term of the topography at a station of height `height_m`, mGal, never negative: the
+/// attraction of the spherical cap between the datum (R0 = 6371 km) and station level, out to
+/// `radius_m` along the ground.
 ///
-/// Above the datum it is the mass below the station. For a negative height it is the rock that is missing overhead, between
-/// station level and the datum: what is not there does not pull up, so the term is positive too.
+/// Above the datum it is the mass below the station. For a negative height it is the rock that is
+/// missing overhead, between station level and the datum: what is not there does not pull up, so
+/// the term is positive too.
 ///
-/// The same body as in [`LAFEHR_1991`](crate::bibliography::LAFEHR_1991), computed by [`ring_m`], which does not cancel for
-/// a thin cap as his closed form does.
+/// The same body as in [`LAFEHR_1991`](crate::bibliography::LAFEHR_1991), computed by [`ring_m`],
+/// which does not cancel for a thin cap as his closed form does.
 ///
 /// ```
 /// use hillpull_physics::bodies::cap::cap_mgal;
@@ -26,18 +28,25 @@ pub fn cap_mgal(height_m: f64, radius_m: f64, density_kg_m3: f64, big_g: f64) ->
     big_g * density_kg_m3 * -ring.outwards_m(0.0, -height_m) * MGAL_PER_M_S2
 }
 
-/// Attraction of a ring of a spherical shell per unit of `G rho`, metres, positive down, for a station on its axis.
+/// Attraction of a ring of a spherical shell per unit of `G rho`, metres, positive down, for a
+/// station on its axis.
 ///
-/// `s_m` is the station's distance from the centre, `psi1_rad` to `psi2_rad` the ring's angular distances (0 <= psi1 < psi2 <=
-/// pi; psi1 = 0 for a cap), `from_m` and `to_m` its radii; swapped radii change the sign. The station may be outside,
-/// inside, or on the surface.
+/// `s_m` is the station's distance from the centre, `psi1_rad` to `psi2_rad` the ring's angular
+/// distances (0 <= psi1 < psi2 <= pi; psi1 = 0 for a cap), `from_m` and `to_m` its radii; swapped
+/// radii change the sign. The station may be outside, inside, or on the surface.
 ///
-/// The sphere of radius r attracts as (pi r / s^2)(l2 - l1)[1 + (s^2 - r^2)/(l1 l2)] per unit of thickness, with l1, l2 the
-/// distances from the station to the edges of its ring and
-/// l2 - l1 = 4 r s sin((psi2 - psi1)/2) sin((psi2 + psi1)/2) / (l1 + l2). That is smooth in r and is integrated by Gauss
-/// quadrature, in panels half as wide as their distance from the nearest edge of the ring: relative error about 1e-14. The
-/// antiderivative in r (for example in [`LAFEHR_1991`](crate::bibliography::LAFEHR_1991)) is a difference of terms of the
-/// size of r^3, and leaves 1e-10 to 1e-6 mGal.
+/// Per unit of thickness the sphere of radius r attracts as
+///
+/// ```text
+/// (pi r / s^2) (l2 - l1) [1 + (s^2 - r^2)/(l1 l2)]
+/// l2 - l1 = 4 r s sin((psi2 - psi1)/2) sin((psi2 + psi1)/2) / (l1 + l2)
+/// ```
+///
+/// with l1 and l2 the distances from the station to the edges of its ring. That is smooth in r and
+/// is integrated by Gauss quadrature, in panels half as wide as their distance from the nearest
+/// edge of the ring: relative error about 1e-14. The antiderivative in r (for example in
+/// [`LAFEHR_1991`](crate::bibliography::LAFEHR_1991)) is a difference of terms of the size of r^3,
+/// and leaves 1e-10 to 1e-6 mGal.
 #[must_use]
 pub fn ring_m(s_m: f64, psi1_rad: f64, psi2_rad: f64, from_m: f64, to_m: f64) -> f64 {
     let ring = Ring::new(s_m, psi1_rad, psi2_rad);
@@ -51,11 +60,13 @@ pub fn ring_m(s_m: f64, psi1_rad: f64, psi2_rad: f64, from_m: f64, to_m: f64) ->
     }
 }
 
-/// A ring as its axis sees it. Radii count from the station's own, which keeps the digits of a small height difference.
+/// A ring as its axis sees it. Radii count from the station's own, which keeps the digits of a
+/// small height difference.
 struct Ring {
     /// The station's distance from the centre.
     s: f64,
-    /// Squared chords on the unit sphere from the axis to the inner and the outer edge, and their difference.
+    /// Squared chords on the unit sphere from the axis to the inner and the outer edge, and their
+    /// difference.
     inner: f64,
     outer: f64,
     difference: f64,
@@ -91,6 +102,9 @@ impl Ring {
 
     /// From `near` to `far`, both on one side of the station's radius, `near` the closer one.
     fn outwards_m(&self, near: f64, far: f64) -> f64 {
+        if self.difference == 0.0 {
+            return 0.0; // without width there is no ring, and no width to step by
+        }
         let edge = if self.inner == 0.0 {
             self.outer
         } else {
@@ -145,6 +159,14 @@ mod tests {
     fn nan_stays_nan() {
         assert!(cap_mgal(f64::NAN, 1e5, 2670.0, 6.674e-11).is_nan());
         assert!(cap_mgal(100.0, f64::NAN, 2670.0, 6.674e-11).is_nan());
+    }
+
+    #[test]
+    fn no_attraction_without_width_or_thickness() {
+        assert_eq!(cap_mgal(100.0, 0.0, 2670.0, 6.674e-11), 0.0);
+        assert_eq!(cap_mgal(0.0, 1e5, 2670.0, 6.674e-11), 0.0);
+        assert_eq!(ring_m(6.4e6, 0.1, 0.1, 6.3e6, 6.4e6), 0.0);
+        assert_eq!(ring_m(6.4e6, 0.1, 0.2, 6.4e6, 6.4e6), 0.0);
     }
 
     proptest! {

@@ -2,9 +2,9 @@
 
 /// Attraction of a column per unit of area at station level and of `G rho`, 1/m, positive down.
 ///
-/// The column stands over a ground point Q, from station level (z = 0) to `dh_m` above it (or down to it, then the
-/// column is rock missing and counts negative). With P the station, u its normal, n the normal at Q and
-/// D = Q(at station level) - P:
+/// The column stands over a ground point Q, from station level (z = 0) to `dh_m` above it (or down
+/// to it, then the column is rock missing and counts negative). With P the station, u its normal, n
+/// the normal at Q and D = Q(at station level) - P:
 ///
 /// | argument | meaning |
 /// |---|---|
@@ -15,10 +15,15 @@
 ///
 /// The area that multiplies the result is (1 + H_P/M)(1 + H_P/N) times the area on the ellipsoid.
 ///
-/// The value is the integral over z from 0 to `dh_m` of (c0 + c1 z)(1 + z/M')(1 + z/N') / (d2 + 2 b z + z^2)^(3/2): Newton's
-/// law over the ellipsoid's volume element. It is written in the integrals I0..I3 of z^k / l^3, in a form
-/// that does not cancel however thin, tall, near or far the column is (derivation in the source). Only a station
-/// on the column's own axis (d = 0) has no value: NaN or an infinity is returned.
+/// The value is Newton's law over the ellipsoid's volume element:
+///
+/// ```text
+/// integral of (c0 + c1 z) (1 + z/M') (1 + z/N') / (d2 + 2 b z + z^2)^(3/2) dz from 0 to dh
+/// ```
+///
+/// It is written in the integrals I0..I3 of z^k / l^3, in a form that does not cancel however thin,
+/// tall, near or far the column is (derivation in the source). Only a station on the column's own
+/// axis (d = 0) has no value: NaN or an infinity is returned.
 ///
 /// On a plane it is -(1/r - 1/sqrt(r^2 + dh^2)):
 ///
@@ -47,9 +52,14 @@ pub fn column_per_area(
 
 /// I0..I3: integrals over t from 0 to z of t^k / l^3, l^2 = d2 + 2 b t + t^2.
 ///
-/// The textbook antiderivatives of I0 and I1 hold (t + b)/(q l) and -(d^2 + b t)/(q l) with q = d^2 - b^2, and
-/// I2 = Lambda - 2 b I1 - d^2 I0, I3 = (L - d) - b Lambda - 2 b I2 - d^2 I1 with Lambda the integral of 1/l and L = l(z).
-/// All four are differences of nearly equal numbers when |z| << d. With
+/// The textbook forms, with q = d^2 - b^2, L = l(z) and Lambda the integral of 1/l,
+///
+/// ```text
+/// I0 = [(t + b)/(q l)]            I2 = Lambda - 2 b I1 - d^2 I0
+/// I1 = [-(d^2 + b t)/(q l)]       I3 = (L - d) - b Lambda - 2 b I2 - d^2 I1
+/// ```
+///
+/// are differences of nearly equal numbers when |z| << d. With
 ///
 /// ```text
 /// w = z/(L + d)    v = d + b w    L - d = w (2b + z)    z = w (L + d)    Lambda = 2 atanh w
@@ -60,7 +70,8 @@ pub fn column_per_area(
 /// ```text
 /// I0 = z/(d L v)    I1 = z w/(L v)
 /// I2 = d w^2 z/(L v) + 2 (atanh w - w)
-/// I3 = d w^2 z^2/(L v) + b w^4 (z/v - 6 w T),    T = (atanh w - w - w^3/3)/w^5 = 1/5 + w^2/7 + w^4/9 ...
+/// I3 = d w^2 z^2/(L v) + b w^4 (z/v - 6 w T)
+/// T = (atanh w - w - w^3/3)/w^5 = 1/5 + w^2/7 + w^4/9 ...
 /// ```
 #[inline]
 fn moments(b: f64, d2: f64, z: f64) -> [f64; 4] {
@@ -176,7 +187,8 @@ mod tests {
             check(d, tilt * d, z);
         }
 
-        /// The whole integrand with Earth-like curvature; the scale of the error is the integral of its modulus.
+        /// The whole integrand with Earth-like curvature; the scale of the error is the integral of
+        /// its modulus.
         #[test]
         fn whole_column(
             log_d in 0.0..5.3f64, log_ratio in -8.0..3.0f64, up in any::<bool>(),

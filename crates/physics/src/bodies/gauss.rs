@@ -1,7 +1,7 @@
 //! Gauss-Legendre quadrature of 8 points, for integrands that are smooth over the interval.
 
-/// Positive abscissas and weights on -1..1 ([`ABRAMOWITZ_STEGUN_1964`](crate::bibliography::ABRAMOWITZ_STEGUN_1964),
-/// table 25.4).
+/// Positive abscissas and weights on -1..1
+/// ([`ABRAMOWITZ_STEGUN_1964`](crate::bibliography::ABRAMOWITZ_STEGUN_1964), table 25.4).
 const NODES: [(f64, f64); 4] = [
     (0.183434642495649804939, 0.362683783378361982965),
     (0.525532409916328985818, 0.313706645877887287338),
@@ -11,8 +11,8 @@ const NODES: [(f64, f64); 4] = [
 
 /// Integral of `f` from `a` to `b`.
 ///
-/// With the nearest singularity of `f` in the complex plane at `t` half-widths from the middle, the relative error is
-/// near (t + sqrt(t^2 - 1))^-16: 5e-15 at t = 4.
+/// With the nearest singularity of `f` in the complex plane at `t` half-widths from the middle, the
+/// relative error is near (t + sqrt(t^2 - 1))^-16: 5e-15 at t = 4.
 pub(crate) fn integral(a: f64, b: f64, mut f: impl FnMut(f64) -> f64) -> f64 {
     let (middle, half) = (0.5 * (a + b), 0.5 * (b - a));
     let mut sum = 0.0;

@@ -5,22 +5,27 @@ use super::gauss;
 /// Below this share of its corner terms a sum has lost too many digits to be used.
 const WELL_CONDITIONED: f64 = 1e-2;
 
-/// A prism this many half-diagonals away is integrated by quadrature (8 x 8 points: relative error 5e-15).
+/// A prism this many half-diagonals away is integrated by quadrature (8 x 8 points: relative error
+/// 5e-15).
 const FAR: f64 = 5.0;
 
-/// Attraction of a rectangular prism per unit of `G rho`, metres, positive down (mass below the station pulls down).
+/// Attraction of a rectangular prism per unit of `G rho`, metres, positive down (mass below the
+/// station pulls down).
 ///
-/// `x_m`, `y_m`, `z_m` are the (lower, upper) limits in metres, station at the origin, z up. The station may be anywhere,
-/// also inside or on a face, edge or corner. Swapped limits change the sign.
+/// `x_m`, `y_m`, `z_m` are the (lower, upper) limits in metres, station at the origin, z up. The
+/// station may be anywhere, also inside or on a face, edge or corner. Swapped limits change the
+/// sign.
 ///
 /// Three forms of one integral, so that about 13 digits are good for any shape and distance; a body
-/// that reaches above and below station level is cut there first, and its two parts may of course cancel:
+/// that reaches above and below station level is cut there first, and its two parts may of course
+/// cancel:
 ///
 /// 1. the 8-corner closed form of [`NAGY_1966`](crate::bibliography::NAGY_1966) and
-///    [`NAGY_2000`](crate::bibliography::NAGY_2000), with the difference over z taken by hand in each vertical edge, so
-///    that a thin prism does not cancel;
-/// 2. where the four edges still cancel (their sum is under 1 % of the terms) and the prism's middle is at least 5
-///    half-diagonals away, Gauss quadrature over its footprint of 1/l(top) - 1/l(bottom), in difference form;
+///    [`NAGY_2000`](crate::bibliography::NAGY_2000), with the difference over z taken by hand in
+///    each vertical edge, so that a thin prism does not cancel;
+/// 2. where the four edges still cancel (their sum is under 1 % of the terms) and the prism's
+///    middle is at least 5 half-diagonals away, Gauss quadrature over its footprint of 1/l(top) -
+///    1/l(bottom), in difference form;
 /// 3. where they cancel and the prism is near, the prism is halved.
 ///
 /// ```
@@ -42,7 +47,8 @@ pub fn prism_m(x_m: [f64; 2], y_m: [f64; 2], z_m: [f64; 2]) -> f64 {
     }
 }
 
-/// Prism between distances `z[0]` and `z[1]` (both of one sign or zero) from station level, as if below it.
+/// Prism between distances `z[0]` and `z[1]` (both of one sign or zero) from station level, as if
+/// below it.
 fn one_side(x: [f64; 2], y: [f64; 2], z: [f64; 2]) -> f64 {
     let terms = [
         edge(x[1], y[1], z),
@@ -52,7 +58,8 @@ fn one_side(x: [f64; 2], y: [f64; 2], z: [f64; 2]) -> f64 {
     ];
     let sum = (terms[0] + terms[1]) + (terms[2] + terms[3]);
     let size: f64 = terms.iter().map(|t| t.abs()).sum();
-    // a footprint around or touching the vertical through the station has terms of one sign, so halving ends
+    // a footprint around or touching the vertical through the station has terms of one sign, so
+    // halving ends
     if sum.is_nan() || sum.abs() >= WELL_CONDITIONED * size {
         return sum;
     }
@@ -69,9 +76,14 @@ fn one_side(x: [f64; 2], y: [f64; 2], z: [f64; 2]) -> f64 {
     }
 }
 
-/// Prism from the vertical through the station to the vertical edge at (x, y), between depths z[0] and z[1]: the integral
-/// over z of atan(x y / (z r)), that is z atan(x y / (z r)) - x asinh(y / p) - y asinh(x / q) with p^2 = x^2 + z^2 and
-/// q^2 = y^2 + z^2, its differences over z written with r1 - r0 = (z1 - z0)(z1 + z0)/(r1 + r0).
+/// Prism from the vertical through the station to the vertical edge at (x, y), between depths z0
+/// and z1: the integral over z of atan(x y / (z r)). With p^2 = x^2 + z^2 and q^2 = y^2 + z^2 it is
+///
+/// ```text
+/// [z atan(x y / (z r)) - x asinh(y / p) - y asinh(x / q)]
+/// ```
+///
+/// whose differences over z are taken by hand, with r1 - r0 = (z1 - z0)(z1 + z0)/(r1 + r0).
 fn edge(x: f64, y: f64, [z0, z1]: [f64; 2]) -> f64 {
     if x == 0.0 || y == 0.0 {
         return 0.0;
@@ -160,7 +172,8 @@ mod tests {
     }
 
     proptest! {
-        /// Two parts make the whole, for slivers, needles, plates and dust from under the station out to 100 km.
+        /// Two parts make the whole, for slivers, needles, plates and dust from under the station
+        /// out to 100 km.
         #[test]
         fn parts_join(
             log in [-4.0..5.0f64, -4.0..5.0f64, -4.0..4.0f64], negative in any::<[bool; 3]>(),

@@ -1,14 +1,18 @@
-//! Sectors of rings about the station on a plane: the compartment of a zone chart, and the plane slope.
+//! Sectors of rings about the station on a plane: the compartment of a zone chart, and the plane
+//! slope.
 
-/// Attraction of an annular sector from level `from_m` to level `to_m` per unit of `G rho`, metres, positive down.
+/// Attraction of an annular sector from level `from_m` to level `to_m` per unit of `G rho`, metres,
+/// positive down.
 ///
-/// The station is on the axis; levels are heights above it, radii horizontal distances, `azimuth_rad` the sector's angle
-/// (2 pi for a full ring; `r1_m` = 0 for a disc). Swapped levels change the sign, so that with `from_m` = 0 and `to_m` = the
-/// height of the terrain above the station the result is the terrain effect, negative for hills and valleys alike, of one
+/// The station is on the axis; levels are heights above it, radii horizontal distances,
+/// `azimuth_rad` the sector's angle (2 pi for a full ring; `r1_m` = 0 for a disc). Swapped levels
+/// change the sign, so that with `from_m` = 0 and `to_m` = the height of the terrain above the
+/// station the result is the terrain effect, negative for hills and valleys alike, of one
 /// compartment of [`HAMMER_1939`](crate::bibliography::HAMMER_1939).
 ///
-/// The textbook form is azimuth times sqrt(r2^2 + z^2) - sqrt(r1^2 + z^2) between two levels. Here both
-/// differences, over radius and over level, are taken by hand: no cancellation for a thin, narrow or far ring.
+/// The textbook form is azimuth times sqrt(r2^2 + z^2) - sqrt(r1^2 + z^2) between two levels. Here
+/// both differences, over radius and over level, are taken by hand: no cancellation for a thin,
+/// narrow or far ring.
 ///
 /// ```
 /// use hillpull_physics::bodies::sector::annular_sector_m;
@@ -27,12 +31,13 @@ pub fn annular_sector_m(azimuth_rad: f64, r1_m: f64, r2_m: f64, from_m: f64, to_
     azimuth_rad * (r2_m - r1_m) * (r2_m + r1_m) * over_level / ((from1 + from2) * (to1 + to2))
 }
 
-/// Terrain effect of a plane slope through the station, of `slope_rad`, inside the annular sector from `r1_m` to `r2_m` and
-/// from azimuth `p1_rad` to `p2_rad`, counted from the direction of dip; per unit of `G rho`, metres, positive down: negative.
+/// Terrain effect of a plane slope through the station, of `slope_rad`, inside the annular sector
+/// from `r1_m` to `r2_m` and from azimuth `p1_rad` to `p2_rad`, counted from the direction of dip;
+/// per unit of `G rho`, metres, positive down: negative.
 ///
-/// -(r2 - r1) {(p2 - p1) - cos(slope) [F(p2 | m) - F(p1 | m)]}, m = sin^2(slope), F Legendre's elliptic integral of the first
-/// kind: the integral over azimuth of 1 - cos(slope in that azimuth). The difference loses digits as 1/slope^2: 13 are good
-/// at 10 degrees, 11 at 1 degree.
+/// -(r2 - r1) {(p2 - p1) - cos(slope) [F(p2 | m) - F(p1 | m)]}, m = sin^2(slope), F Legendre's
+/// elliptic integral of the first kind: the integral over azimuth of 1 - cos(slope in that
+/// azimuth). The difference loses digits as 1/slope^2: 13 are good at 10 degrees, 11 at 1 degree.
 #[must_use]
 pub fn plane_slope_sector_m(slope_rad: f64, r1_m: f64, r2_m: f64, p1_rad: f64, p2_rad: f64) -> f64 {
     let (sin_slope, cos_slope) = slope_rad.sin_cos();
@@ -41,8 +46,8 @@ pub fn plane_slope_sector_m(slope_rad: f64, r1_m: f64, r2_m: f64, p1_rad: f64, p
     -(r2_m - r1_m) * ((p2_rad - p1_rad) - cos_slope * elliptic)
 }
 
-/// Legendre's F(p | m), 0 <= m < 1, any p ([`CARLSON_1995`](crate::bibliography::CARLSON_1995), equation 4.5, and the period of
-/// the integrand).
+/// Legendre's F(p | m), 0 <= m < 1, any p ([`CARLSON_1995`](crate::bibliography::CARLSON_1995),
+/// equation 4.5, and the period of the integrand).
 fn elliptic_f(p: f64, m: f64) -> f64 {
     let turns = (p / std::f64::consts::PI).round();
     let (sin, cos) = (p - turns * std::f64::consts::PI).sin_cos();
@@ -54,9 +59,11 @@ fn elliptic_f(p: f64, m: f64) -> f64 {
     }
 }
 
-/// Carlson's symmetric integral R_F ([`CARLSON_1995`](crate::bibliography::CARLSON_1995), algorithm 1), at most one argument 0.
+/// Carlson's symmetric integral R_F ([`CARLSON_1995`](crate::bibliography::CARLSON_1995), algorithm
+/// 1), at most one argument 0.
 fn carlson_rf(mut x: f64, mut y: f64, mut z: f64) -> f64 {
-    // each duplication brings the arguments 4 times closer: 30 take any pair of doubles of like size to rounding
+    // each duplication brings the arguments 4 times closer: 30 take any pair of doubles of like
+    // size to rounding
     for _ in 0..30 {
         let mean = (x + y + z) / 3.0;
         if (x - mean).abs().max((y - mean).abs()).max((z - mean).abs()) < 2e-3 * mean {
