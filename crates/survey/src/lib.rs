@@ -4,6 +4,7 @@
 //! stations found in them; [`StationTable::engine_stations`] gives what the engine computes; [`join`] brings its
 //! results back to the rows of the table; [`write_effects`] writes the user's columns with the results appended.
 mod error;
+mod gdal_log;
 mod output;
 mod provenance;
 mod summary;

@@ -1,6 +1,9 @@
 //! The survey file: the options of the command in TOML, with the same words.
-use crate::error::SurveyError;
+mod values;
+
+use crate::error::{FileProblem, SurveyError};
 use hillpull_engine::Ground;
+use std::fs;
 use std::path::{Path, PathBuf};
 
 /// What ground below the datum is, where nothing else says so.
@@ -76,8 +79,20 @@ impl SurveyFile {
     /// # Errors
     /// A file that cannot be read, is no TOML, or has unknown keys or values of the wrong kind.
     pub fn read(path: &Path) -> Result<Self, SurveyError> {
-        let _ = path;
-        Ok(Self::default())
+        let cannot = |source| SurveyError::Io {
+            action: "read the survey file",
+            path: path.to_owned(),
+            source,
+        };
+        let bytes = fs::read(path).map_err(cannot)?;
+        let text = String::from_utf8(bytes).map_err(|_| SurveyError::SurveyFile {
+            path: path.to_owned(),
+            line: None,
+            problem: FileProblem::Syntax {
+                detail: "it is not UTF-8 text".to_owned(),
+            },
+        })?;
+        Self::parse(&text, path)
     }
 
     /// Reads the text of a survey file that stands at `path`.
@@ -85,8 +100,20 @@ impl SurveyFile {
     /// # Errors
     /// Text that is no TOML, or has unknown keys or values of the wrong kind.
     pub fn parse(text: &str, path: &Path) -> Result<Self, SurveyError> {
-        let _ = (text, path);
-        Ok(Self::default())
+        let text = text.strip_prefix('\u{feff}').unwrap_or(text);
+        values::parse(text, path.parent().unwrap_or(Path::new(""))).map_err(|(at, problem)| {
+            let line = at.map(|at| {
+                1 + text.as_bytes()[..at.min(text.len())]
+                    .iter()
+                    .filter(|&&b| b == b'\n')
+                    .count()
+            });
+            SurveyError::SurveyFile {
+                path: path.to_owned(),
+                line,
+                problem,
+            }
+        })
     }
 }
 
