@@ -1,22 +1,70 @@
-//! TRANSITIONAL.
-use crate::grid::Grid;
+//! The relief: layers in order of preference, each reduced to what the ones before it leave.
 
-/// Layers of relief, finest first, with their moment pyramids.
+use crate::clip::Ring;
+use crate::cover::union;
+use crate::error::ReliefError;
+use crate::grid::Grid;
+use crate::layer::Layer;
+use hillpull_physics::ellipsoid::Vec3;
+
+/// Layers of relief, the preferred first, with their moment pyramids.
 #[derive(Debug)]
 pub struct Relief {
-    grids: Vec<Grid>,
+    /// The layers; every piece of ground belongs to the first that covers it.
+    pub layers: Vec<Layer>,
+}
+
+/// The surface found at a ground point.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct SurfacePoint {
+    /// Index of the layer that supplies it.
+    pub layer: usize,
+    /// Row and column of the cell.
+    pub cell: (usize, usize),
+    /// Column and row offset from the cell's middle, cells.
+    pub offset: (f64, f64),
+    /// Height of the surface, m.
+    pub height_m: f64,
 }
 
 impl Relief {
-    /// Builds.
-    #[must_use]
-    pub fn build(grids: Vec<Grid>) -> Self {
-        Self { grids }
+    /// Places the grids on the ellipsoid, the preferred first, and builds their pyramids.
+    ///
+    /// # Errors
+    /// A grid whose posts can't be placed.
+    pub fn build(grids: Vec<Grid>) -> Result<Self, ReliefError> {
+        let mut layers = Vec::with_capacity(grids.len());
+        let mut covers: Vec<Vec<Ring>> = Vec::with_capacity(grids.len());
+        for grid in grids {
+            let mut layer = Layer::place(grid)?;
+            let voids = layer.mark_voids();
+            let last = layers.len();
+            layers.push(layer);
+            let finer: Vec<Vec<Ring>> = (0..last)
+                .map(|k: usize| {
+                    let before: &Layer = &layers[k];
+                    before.rings_in(&covers[k], &layers[last])
+                })
+                .collect();
+            covers.push(layers[last].own_rings(voids));
+            let layer = &mut layers[last];
+            layer.mark_covered(&union(finer));
+            layer.pool_moments();
+        }
+        Ok(Self { layers })
     }
 
-    /// Number of layers.
+    /// The surface at a ground point given by its foot on the ellipsoid (ECEF, m).
     #[must_use]
-    pub fn layer_count(&self) -> usize {
-        self.grids.len()
+    pub fn surface_at(&self, foot_m: Vec3) -> Option<SurfacePoint> {
+        self.layers.iter().enumerate().find_map(|(layer, l)| {
+            let (row, col, x, y) = l.cell_at(foot_m)?;
+            Some(SurfacePoint {
+                layer,
+                cell: (row, col),
+                offset: (x, y),
+                height_m: l.surface(row, col).at(x, y),
+            })
+        })
     }
 }

@@ -1,0 +1,215 @@
+//! Cells next to the station, in polar form about it.
+//!
+//! A polygon's integral is the signed sum over its edges of the triangle from the station to the edge. Along a ray from
+//! the station the point is P + t (E - P), the area element carries a factor t that takes away the kernel's 1/r, and what
+//! is left is smooth: Gauss-Legendre in t, and in s with (distance along the edge) = p sinh s, p the station's distance
+//! from the edge's line, so that a station almost on an edge costs nothing in accuracy.
+
+use crate::bend::Bend;
+use crate::frame::{StationFrame, TileFrame};
+use crate::kernel::column;
+use crate::zones::Edges;
+use hillpull_relief::moments::Bilinear;
+
+/// Gauss-Legendre nodes and weights on [-1, 1] (Abramowitz & Stegun 1964, table 25.4).
+const GAUSS_8: [(f64, f64); 8] = [
+    (-0.960_289_856_497_536_2, 0.101_228_536_290_376_26),
+    (-0.796_666_477_413_626_7, 0.222_381_034_453_374_48),
+    (-0.525_532_409_916_329, 0.313_706_645_877_887_3),
+    (-0.183_434_642_495_649_8, 0.362_683_783_378_362),
+    (0.183_434_642_495_649_8, 0.362_683_783_378_362),
+    (0.525_532_409_916_329, 0.313_706_645_877_887_3),
+    (0.796_666_477_413_626_7, 0.222_381_034_453_374_48),
+    (0.960_289_856_497_536_2, 0.101_228_536_290_376_26),
+];
+const GAUSS_6: [(f64, f64); 6] = [
+    (-0.932_469_514_203_152, 0.171_324_492_379_170_36),
+    (-0.661_209_386_466_264_5, 0.360_761_573_048_138_6),
+    (-0.238_619_186_083_196_9, 0.467_913_934_572_691),
+    (0.238_619_186_083_196_9, 0.467_913_934_572_691),
+    (0.661_209_386_466_264_5, 0.360_761_573_048_138_6),
+    (0.932_469_514_203_152, 0.171_324_492_379_170_36),
+];
+
+/// Widest panel in s.
+const PANEL: f64 = 1.0;
+/// Ratio of successive panels along a ray away from where the surface comes nearest to the station's level.
+const GRADING: f64 = 3.0;
+
+/// What the near zone needs to know of the run.
+pub(crate) struct NearContext<'a> {
+    pub station: &'a StationFrame,
+    pub edges: &'a Edges,
+    pub bend: Option<&'a Bend>,
+}
+
+/// Sums of the near zone by zone.
+pub(crate) struct NearSums<'a> {
+    /// Values by zone, m.
+    pub value: &'a mut [f64],
+    /// Areas by zone, m2 at station level.
+    pub area: &'a mut [f64],
+    /// Kernel evaluations.
+    pub evaluations: &'a mut u64,
+}
+
+/// Adds a polygon of one cell's surface, given by edges that are summed with `sign`.
+///
+/// `edges` are in cells from the station, `surface` is about the station, `(x, y)` is the station in the tile's frame.
+pub(crate) fn add_polygon(
+    context: &NearContext<'_>,
+    tile: &TileFrame,
+    (x, y): (f64, f64),
+    surface: &Bilinear,
+    edges: impl Iterator<Item = ([f64; 2], [f64; 2])>,
+    sign: f64,
+    sums: &mut NearSums<'_>,
+) {
+    let [tx, ty] = tile.tangents_at(x, y);
+    let metric = |p: [f64; 2]| [p[0] * tx[0] + p[1] * ty[0], p[0] * tx[1] + p[1] * ty[1]];
+    for (e0, e1) in edges {
+        let cross = e0[0] * e1[1] - e1[0] * e0[1];
+        let (v0, v1) = (metric(e0), metric(e1));
+        let along = [v1[0] - v0[0], v1[1] - v0[1]];
+        let length = along[0].hypot(along[1]);
+        if length == 0.0 {
+            continue;
+        }
+        let unit = [along[0] / length, along[1] / length];
+        let p = (v0[0] * unit[1] - v0[1] * unit[0]).abs();
+        if p <= 1e-9 * length {
+            continue; // the station lies on the edge's line: no area
+        }
+        let (y0, y1) = (
+            v0[0] * unit[0] + v0[1] * unit[1],
+            v1[0] * unit[0] + v1[1] * unit[1],
+        );
+        let (s0, s1) = ((y0 / p).asinh(), (y1 / p).asinh());
+        let panels = ((s1 - s0) / PANEL).ceil().max(1.0) as usize;
+        let half = 0.5 * (s1 - s0) / panels as f64;
+        for panel in 0..panels {
+            let middle = s0 + half * (2 * panel + 1) as f64;
+            for (node, weight) in GAUSS_6 {
+                let s = middle + half * node;
+                let f = (p * s.sinh() - y0) / length;
+                let rho = p * s.cosh();
+                let end = [e0[0] + f * (e1[0] - e0[0]), e0[1] + f * (e1[1] - e0[1])];
+                // cells^2 per unit of s, still to be multiplied by t dt
+                let scale = sign * cross * weight * half * rho / length;
+                add_ray(context, tile, (x, y), surface, end, rho, scale, sums);
+            }
+        }
+    }
+}
+
+fn add_ray(
+    context: &NearContext<'_>,
+    tile: &TileFrame,
+    (x, y): (f64, f64),
+    surface: &Bilinear,
+    end: [f64; 2],
+    rho: f64,
+    scale: f64,
+    sums: &mut NearSums<'_>,
+) {
+    let slope = surface.a * end[0] + surface.b * end[1];
+    let twist = surface.t * end[0] * end[1];
+    let base = surface.m - context.station.height_m;
+    let height = |t: f64| {
+        let rise = context.bend.map_or(0.0, |b| b.rise(t * rho));
+        base + rise + t * (slope + t * twist)
+    };
+    let mut cuts = Cuts::new();
+    for (zone, &edge) in context.edges.outer.iter().enumerate() {
+        if edge < rho {
+            cuts.push(edge / rho, zone + 1);
+        }
+    }
+    grade(&mut cuts, height(0.0), slope, rho);
+    cuts.sort();
+    let mut from = 0.0;
+    let mut zone = 0;
+    for k in 0..=cuts.len {
+        let (to, next) = if k < cuts.len {
+            cuts.at[k]
+        } else {
+            (1.0, usize::MAX)
+        };
+        if to > from {
+            let half = 0.5 * (to - from);
+            let (mut value, mut area) = (0.0, 0.0);
+            for (node, weight) in GAUSS_8 {
+                let t = from + half * (1.0 + node);
+                let (px, py) = (x + t * end[0], y + t * end[1]);
+                let sight = tile.sight(px, py);
+                let da = weight * half * t * tile.area_at(px, py);
+                area += da;
+                value += da * column(sight.d2, sight.c0, sight.b, sight.c1, tile.k1, height(t));
+            }
+            *sums.evaluations += GAUSS_8.len() as u64;
+            if zone < sums.value.len() {
+                sums.value[zone] += scale * value;
+                sums.area[zone] += scale * area;
+            }
+            from = to;
+        }
+        if next != usize::MAX && next != KEEP_ZONE {
+            zone = next;
+        }
+    }
+}
+
+const KEEP_ZONE: usize = usize::MAX - 1;
+const MOST_CUTS: usize = 64;
+
+/// Places along a ray where the integrand is cut, with the zone that begins there.
+struct Cuts {
+    at: [(f64, usize); MOST_CUTS],
+    len: usize,
+}
+
+impl Cuts {
+    fn new() -> Self {
+        Self {
+            at: [(0.0, 0); MOST_CUTS],
+            len: 0,
+        }
+    }
+
+    fn push(&mut self, t: f64, zone: usize) {
+        if self.len < MOST_CUTS {
+            self.at[self.len] = (t, zone);
+            self.len += 1;
+        }
+    }
+
+    fn sort(&mut self) {
+        self.at[..self.len].sort_by(|a, b| a.0.total_cmp(&b.0));
+    }
+}
+
+/// Cuts a ray where the surface, `offset` above the station and rising by `slope` over the length `rho`, comes nearest to
+/// the station's level: the kernel varies there over |offset| / (1 + slope^2).
+fn grade(cuts: &mut Cuts, offset: f64, slope: f64, rho: f64) {
+    let g = slope / rho;
+    let (middle, width) = (
+        -offset * g / (1.0 + g * g) / rho,
+        (offset / (1.0 + g * g) / rho).abs(),
+    );
+    if width < 1e-9 || width > 2.0 {
+        return;
+    }
+    for direction in [-1.0, 1.0] {
+        let mut reach = width;
+        for _ in 0..24 {
+            let t = middle + direction * reach;
+            if !(0.0..1.0).contains(&t) && direction * t > 0.0_f64.max(direction) {
+                break; // past the end of the ray on this side
+            }
+            if t > 1e-9 && t < 0.999 {
+                cuts.push(t, KEEP_ZONE);
+            }
+            reach *= GRADING;
+        }
+    }
+}
