@@ -149,6 +149,21 @@ pub enum Fault {
         /// Limit of the absolute height, metres.
         limit_m: f64,
     },
+    /// A usual mark of missing data, stated nowhere, among heights far from it.
+    #[error(
+        "the value {value} at row {row}, column {col} of the file (from 0) stands beside a height of {beside_m} m: \
+         it looks like a mark of missing data, but the file states none such"
+    )]
+    UnstatedVoid {
+        /// Row of the file, from 0.
+        row: usize,
+        /// Column of the file, from 0.
+        col: usize,
+        /// Value as stored.
+        value: f64,
+        /// Height of a neighbour, metres.
+        beside_m: f64,
+    },
     /// Only voids where heights are needed.
     #[error("all {posts} posts within reach of the stations are voids")]
     AllVoid {
@@ -262,7 +277,7 @@ impl ReliefError {
             Fault::BadScale { .. } => {
                 format!("set them right: gdal_edit.py -scale <scale> -offset <offset> {file}")
             }
-            Fault::AbsurdHeight { value, .. } => format!(
+            Fault::AbsurdHeight { value, .. } | Fault::UnstatedVoid { value, .. } => format!(
                 "if this value marks missing data, say so: gdal_edit.py -a_nodata {value} {file}"
             ),
             Fault::AllVoid { .. } => {

@@ -3,31 +3,22 @@
 use std::ffi::{CStr, CString, c_char, c_int};
 use std::path::PathBuf;
 use std::ptr;
+use std::sync::Once;
 
 use gdal::Dataset;
 use gdal::config::{
     clear_thread_local_config_option, get_config_option, get_thread_local_config_option,
-    set_thread_local_config_option,
+    set_error_handler, set_thread_local_config_option,
 };
 use gdal::cpl::CslStringList;
 use gdal::errors::GdalError;
 
-/// While it lives, GDAL prints nothing from this thread: what goes wrong comes back as an error.
-pub(super) struct Quiet(());
-
-impl Quiet {
-    pub(super) fn new() -> Self {
-        // SAFETY: pushes GDAL's own handler onto this thread's stack of handlers; `drop` takes it off again.
-        unsafe { gdal_sys::CPLPushErrorHandler(Some(gdal_sys::CPLQuietErrorHandler)) };
-        Self(())
-    }
-}
-
-impl Drop for Quiet {
-    fn drop(&mut self) {
-        // SAFETY: `new` pushed one handler onto this thread's stack.
-        unsafe { gdal_sys::CPLPopErrorHandler() };
-    }
+/// From here on GDAL prints nothing: what goes wrong comes back as an error, in the words of this program.
+///
+/// For the whole process, because GDAL decodes in threads of its own, which would print past a handler of this thread.
+pub(super) fn silence_gdal() {
+    static ONCE: Once = Once::new();
+    ONCE.call_once(|| set_error_handler(|_, _, _| {}));
 }
 
 /// A GDAL option that holds for this thread until the value is dropped.

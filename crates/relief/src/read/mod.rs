@@ -1,6 +1,7 @@
 //! Reading a DEM: anything GDAL reads, posts kept where they lie, only the part within reach of the stations.
 
 mod crs;
+mod decode;
 mod ffi;
 mod heights;
 mod place;
@@ -23,7 +24,8 @@ pub use resample::{Resample, ResampleMethod};
 use crate::error::{Fault, ReliefError};
 use crate::grid::{Grid, Origin, Placement};
 use crs::Crs;
-use heights::{Decoding, Watch};
+use decode::Decoding;
+use heights::Watch;
 use window::{Extent, Window};
 
 const ACTION: &str = "reading DEM";
@@ -92,7 +94,7 @@ impl From<ReliefError> for Failure {
 }
 
 fn read(path: &Path, options: &ReadOptions<'_>) -> Result<Grid, Failure> {
-    let _quiet = ffi::Quiet::new();
+    ffi::silence_gdal();
     let threads = options
         .threads
         .map_or_else(|| "ALL_CPUS".to_owned(), |n| n.to_string());
@@ -133,11 +135,12 @@ fn read(path: &Path, options: &ReadOptions<'_>) -> Result<Grid, Failure> {
         Some(_) => Crs::of(&source).ok().and_then(|crs| crs.vertical_unit),
         None => crs.vertical_unit.clone(),
     };
-    let (height_unit, metres) = heights::unit_of(&meaning.unit(), vertical_unit.as_ref())?;
+    let (height_unit, metres) = decode::unit_of(&meaning.unit(), vertical_unit.as_ref())?;
     let whole = Placement {
         affine,
         crs: crs.definition.clone(),
     };
+    check_place(&whole, file_rows, file_cols)?;
     warnings.extend(doubts(&crs, &whole, &meaning));
 
     let ring = window::ring(&whole, file_cols, crs.full_circle);
@@ -156,6 +159,7 @@ fn read(path: &Path, options: &ReadOptions<'_>) -> Result<Grid, Failure> {
         stop: options.stop,
     };
     let heights_m = heights::read(&band, window, ring, &decoding, watch)?;
+    decoding.check_voids(&heights_m, window, ring)?;
 
     let [x, y] = whole.xy(window.first_row as f64, window.first_col as f64);
     let grid = Grid {
@@ -181,10 +185,6 @@ fn read(path: &Path, options: &ReadOptions<'_>) -> Result<Grid, Failure> {
             warnings,
         },
     };
-    if grid.heights_m.iter().all(|h| h.is_nan()) {
-        let posts = grid.heights_m.len();
-        return Err(Fault::AllVoid { posts }.into());
-    }
     Ok(grid)
 }
 
@@ -300,6 +300,24 @@ fn post_affine(dataset: &Dataset) -> Result<[f64; 6], Fault> {
         return Err(Fault::DegeneratePlacement { affine });
     }
     Ok(affine)
+}
+
+/// Refuses a grid of which neither the middle nor a corner has a place on the ellipsoid.
+fn check_place(placement: &Placement, rows: usize, cols: usize) -> Result<(), ReliefError> {
+    let (last_row, last_col) = (rows as f64 - 1.0, cols as f64 - 1.0);
+    let middle = [(last_row / 2.0).floor(), (last_col / 2.0).floor()];
+    let posts = [
+        middle,
+        [0.0, 0.0],
+        [0.0, last_col],
+        [last_row, 0.0],
+        [last_row, last_col],
+    ];
+    let placed = placement.lonlat_rad_or_nan(&posts)?;
+    if placed.iter().all(|at| at[0].is_nan()) {
+        placement.lonlat_rad(&[middle])?;
+    }
+    Ok(())
 }
 
 /// The window to read, and the ring it may run over the end of.

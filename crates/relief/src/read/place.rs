@@ -5,7 +5,7 @@
 
 use gdal::spatial_ref::{AxisMappingStrategy, CoordTransform, CoordTransformOptions, SpatialRef};
 
-use super::ffi::Quiet;
+use super::ffi::silence_gdal;
 use super::gdal_text;
 use crate::error::{Fault, ReliefError};
 use crate::grid::{LonLatBox, Placement};
@@ -65,7 +65,7 @@ impl Placement {
         let Some(definition) = self.projection() else {
             return Ok((xy.map(from_degrees).collect(), None));
         };
-        let _quiet = Quiet::new();
+        silence_gdal();
         let transform = to_wgs84(definition, false).map_err(|detail| {
             let crs = definition.to_owned();
             ReliefError::new(ACTION, "", Fault::UnusableCrs { crs, detail })
@@ -90,7 +90,7 @@ impl Placement {
 
     /// Whether no better way from this CRS to WGS 84 is known than to take its datum for WGS 84.
     pub(crate) fn datum_is_guessed(&self) -> bool {
-        let _quiet = Quiet::new();
+        silence_gdal();
         self.projection()
             .is_some_and(|definition| to_wgs84(definition, true).is_err())
     }
