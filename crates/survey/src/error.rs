@@ -374,7 +374,7 @@ fn io_hint(source: &io::Error) -> Option<String> {
             "check the spelling of the path; relative paths start at the current folder"
         }
         io::ErrorKind::PermissionDenied => "check the permissions of the file and of its folder",
-        io::ErrorKind::StorageFull | io::ErrorKind::QuotaExceeded => {
+        io::ErrorKind::StorageFull | io::ErrorKind::QuotaExceeded | io::ErrorKind::FileTooLarge => {
             "free some space or write to another disk; an output that existed before is unchanged"
         }
         io::ErrorKind::IsADirectory => "name a file, not a folder",

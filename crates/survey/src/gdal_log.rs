@@ -10,10 +10,7 @@ const KEPT: usize = 8;
 pub(crate) fn listen() {
     FIRST_USE.call_once(|| {
         gdal::config::set_error_handler(|class, _number, text| {
-            if matches!(
-                class,
-                CplErrType::Failure | CplErrType::Fatal | CplErrType::Warning
-            ) {
+            if matches!(class, CplErrType::Failure | CplErrType::Fatal) {
                 let mut kept = MESSAGES.lock().unwrap_or_else(PoisonError::into_inner);
                 if kept.len() < KEPT {
                     kept.push(text.to_owned());
@@ -27,20 +24,20 @@ pub(crate) fn listen() {
         .clear();
 }
 
-/// What GDAL said about an error: its own words where the wrapper has none.
+/// What GDAL said about an error: the first failure heard since [`listen`], which is the cause of those after it, else
+/// the words of the wrapper.
 pub(crate) fn detail(error: &GdalError) -> String {
-    let own = match error {
-        GdalError::CplError { msg, .. } | GdalError::NullPointer { msg, .. } => msg.clone(),
-        GdalError::OgrError { .. } => String::new(),
-        other => other.to_string(),
-    };
-    if !own.trim().is_empty() {
-        return own;
-    }
     let heard = MESSAGES
         .lock()
         .unwrap_or_else(PoisonError::into_inner)
-        .last()
+        .first()
         .cloned();
-    heard.unwrap_or_else(|| error.to_string())
+    heard.unwrap_or_else(|| match error {
+        GdalError::CplError { msg, .. } | GdalError::NullPointer { msg, .. }
+            if !msg.trim().is_empty() =>
+        {
+            msg.clone()
+        }
+        other => other.to_string(),
+    })
 }

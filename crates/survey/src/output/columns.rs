@@ -143,6 +143,23 @@ fn mgal_decimals(tolerance_mgal: f64) -> usize {
 }
 
 /// Names of the result columns, in order.
+///
+/// | column | unit | holds |
+/// |---|---|---|
+/// | `terrain_effect_mgal` | mGal, positive down | attraction of the body between the station's level and the surface |
+/// | `terrain_correction_mgal` | mGal | minus the terrain effect |
+/// | `topography_mgal` | mGal, positive down | attraction of everything between the datum and the surface |
+/// | `zone_<from>_<to>_m_mgal` | mGal, positive down | the terrain effect of one zone; edges in metres along the ground |
+/// | `numeric_bound_mgal` | mGal | bound of the numeric error of the terrain effect |
+/// | `dem_height_m` | m | height of the DEM at the station |
+/// | `height_misfit_m` | m | height of the station minus that of the DEM |
+/// | `covered` | 1 | share of the disc to the outer radius that has a DEM, 0 to 1 |
+/// | `notes` | | remarks; why there is no result |
+///
+/// mGal columns have 3 decimals (1 µGal), more only if the tolerance asked for is finer (4 at 0.1 µGal, 5 at
+/// 0.01 µGal). The bound has one decimal more and is rounded up. Heights have 3 decimals. `covered` has 4 and is 1.0000
+/// only where nothing is missing. Zones are rounded one by one, so their printed sum may differ from the printed total
+/// in the last digit.
 #[must_use]
 pub fn result_columns(settings: &Settings) -> Vec<String> {
     let mut names = Layout::new(settings).numbers;

@@ -23,6 +23,19 @@ pub fn write_effects_csv(
     outcomes: &[Outcome],
     settings: &Settings,
 ) -> io::Result<()> {
+    write_table(out, table, outcomes, settings).map_err(|e| match e.into_kind() {
+        // The system's own error, so that "no space left" is still known as such further up.
+        csv::ErrorKind::Io(e) => e,
+        other => io::Error::other(format!("{other:?}")),
+    })
+}
+
+fn write_table(
+    out: &mut dyn Write,
+    table: &StationTable,
+    outcomes: &[Outcome],
+    settings: &Settings,
+) -> Result<(), csv::Error> {
     let dialect = out_dialect(table);
     let layout = Layout::new(settings);
     let terminator = if dialect.crlf {
@@ -91,7 +104,7 @@ pub fn write_effects_csv(
         writer.write_field(outcome.notes.join("; "))?;
         writer.write_record(None::<&[u8]>)?;
     }
-    writer.flush()
+    Ok(writer.flush()?)
 }
 
 fn out_dialect(table: &StationTable) -> Dialect {

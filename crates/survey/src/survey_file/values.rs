@@ -114,11 +114,11 @@ impl Value<'_> {
     }
 
     fn path(&self) -> Result<PathBuf, Fault> {
-        Ok(self.from_folder(self.text_of(self.value, "a file name in quotes")?))
+        Ok(self.in_folder(self.text_of(self.value, "a file name in quotes")?))
     }
 
     /// `-` is standard output and stays what it is; `join` keeps absolute paths.
-    fn from_folder(&self, name: String) -> PathBuf {
+    fn in_folder(&self, name: String) -> PathBuf {
         if name == "-" {
             PathBuf::from(name)
         } else {
@@ -131,9 +131,9 @@ impl Value<'_> {
         match self.value.get_ref() {
             DeValue::Array(list) => list
                 .iter()
-                .map(|v| Ok(self.from_folder(self.text_of(v, WANTED)?)))
+                .map(|v| Ok(self.in_folder(self.text_of(v, WANTED)?)))
                 .collect(),
-            _ => Ok(vec![self.from_folder(self.text_of(self.value, WANTED)?)]),
+            _ => Ok(vec![self.in_folder(self.text_of(self.value, WANTED)?)]),
         }
     }
 

@@ -234,68 +234,48 @@ impl Finder<'_> {
             .transpose()?;
         let (lon, lat) = (self.any_of(LON_NAMES), self.any_of(LAT_NAMES));
         let (x, y) = (self.any_of(X_NAMES), self.any_of(Y_NAMES));
-        let both = |a: &[usize], b: &[usize]| [a, b].concat();
-        let (x, y) = match (named_x, named_y) {
-            (Some(x), Some(y)) => (x, y),
-            (Some(nx), None) => {
-                let candidates = if lon.contains(&nx) {
-                    lat.clone()
-                } else if y.is_empty() {
-                    lat.clone()
-                } else {
-                    y
-                };
-                (nx, self.one_of(&candidates, "latitude or y", "--y")?)
-            }
-            (None, Some(ny)) => {
-                let candidates = if lat.contains(&ny) {
-                    lon.clone()
-                } else if x.is_empty() {
-                    lon.clone()
-                } else {
-                    x
-                };
-                (self.one_of(&candidates, "longitude or x", "--x")?, ny)
-            }
-            (None, None) => {
-                let have_degrees = !lon.is_empty() && !lat.is_empty();
-                let have_xy = !x.is_empty() && !y.is_empty();
-                let use_degrees = match (have_degrees, have_xy) {
-                    (true, true) => {
-                        let used = if projected {
-                            "x and y"
-                        } else {
-                            "longitude and latitude"
-                        };
-                        notes.push(format!(
-                            "the table has both longitude, latitude and x, y: {used} are used (--x and --y name others)"
-                        ));
-                        !projected
-                    }
-                    (true, false) => true,
-                    (false, true) => false,
-                    (false, false) => {
-                        let (what, option) = if lon.is_empty() && x.is_empty() {
-                            ("longitude or x", "--x")
-                        } else {
-                            ("latitude or y", "--y")
-                        };
-                        return Err(self.missing(what, option));
-                    }
-                };
-                let (xs, ys) = if use_degrees {
-                    (lon.clone(), lat.clone())
-                } else {
-                    (x, y)
-                };
-                (
-                    self.one_of(&xs, "longitude or x", "--x")?,
-                    self.one_of(&ys, "latitude or y", "--y")?,
-                )
-            }
+        let degrees = match (named_x, named_y) {
+            (Some(x), Some(y)) => return Ok((x, y, lon.contains(&x) && lat.contains(&y))),
+            // One is named: its partner is of the same kind, if there is one.
+            (Some(named), None) => lon.contains(&named) || y.is_empty(),
+            (None, Some(named)) => lat.contains(&named) || x.is_empty(),
+            (None, None) => self.use_degrees([&lon, &lat, &x, &y], projected, notes)?,
         };
-        let all = both(&lon, &lat);
-        Ok((x, y, all.contains(&x) && all.contains(&y)))
+        let (xs, ys) = if degrees { (&lon, &lat) } else { (&x, &y) };
+        let x = named_x.map_or_else(|| self.one_of(xs, "longitude or x", "--x"), Ok)?;
+        let y = named_y.map_or_else(|| self.one_of(ys, "latitude or y", "--y"), Ok)?;
+        Ok((x, y, lon.contains(&x) && lat.contains(&y)))
+    }
+
+    /// Whether longitude and latitude are used, not x and y, where no option names either.
+    fn use_degrees(
+        &self,
+        [lon, lat, x, y]: [&[usize]; 4],
+        projected: bool,
+        notes: &mut Vec<String>,
+    ) -> Result<bool, TableProblem> {
+        let have_degrees = !lon.is_empty() && !lat.is_empty();
+        let have_xy = !x.is_empty() && !y.is_empty();
+        if !have_degrees && !have_xy {
+            let x_missing = lon.is_empty() && x.is_empty();
+            return Err(if x_missing {
+                self.missing("longitude or x", "--x")
+            } else {
+                self.missing("latitude or y", "--y")
+            });
+        }
+        if have_degrees && have_xy {
+            let used = if projected {
+                "x and y"
+            } else {
+                "longitude and latitude"
+            };
+            notes.push(format!(
+                "the table has both longitude, latitude and x, y: {used} are used (--x and --y name others)"
+            ));
+            return Ok(!projected);
+        }
+        Ok(have_degrees)
     }
 }
 
