@@ -15,7 +15,7 @@ use std::sync::atomic::{AtomicBool, Ordering};
 /// Times that a walk is repeated with smaller shares when its bound stays above the tolerance.
 const MOST_WALKS: usize = 6;
 /// Part of the value that formulas and rounding may miss: the kernel's 1e-8, positions, single-precision moments.
-const FLOOR: f64 = 3e-8;
+const FLOOR: f64 = 2e-8;
 /// The bending radius is at least this many posts of the DEM under the station.
 const BEND_POSTS: f64 = 3.0;
 
@@ -67,7 +67,7 @@ pub fn effect(
         radius: settings.bend_radius_m.max(BEND_POSTS * spacing_m) * frame.stretch,
     });
     let zones_m = settings.zones_m();
-    let edges = Edges::new(&frame, &zones_m);
+    let edges = Edges::new(&zones_m);
     // mGal per metre of the walk's values
     let unit = settings.big_g * settings.density_kg_m3 * MGAL_PER_M_S2;
     let tolerance = settings.tolerance_mgal / unit.abs();
@@ -87,7 +87,7 @@ pub fn effect(
                 settings.density_kg_m3,
                 settings.big_g,
             );
-            return Ok(result(&walk.sums, &edges, unit, bound, cap, |out| {
+            return Ok(result(&walk.sums, &edges, frame.stretch, unit, bound, cap, |out| {
                 out.dem_height_m = surface.height_m;
                 out.height_misfit_m = misfit_m;
                 out.layer = surface.layer;
@@ -114,6 +114,7 @@ fn bound(sums: &Sums) -> f64 {
 fn result(
     sums: &Sums,
     edges: &Edges,
+    stretch: f64,
     unit: f64,
     bound: f64,
     cap_mgal: f64,
@@ -125,7 +126,7 @@ fn result(
     let mut zone_covered = Vec::with_capacity(edges.outer.len());
     for (area, edge) in sums.area.iter().zip(&edges.outer) {
         // the area within chord c on a sphere is pi c^2
-        let whole = PI * edge * edge;
+        let whole = PI * (edge * stretch) * (edge * stretch);
         zone_covered.push((area / (whole - inner)).clamp(0.0, 1.0));
         inner = whole;
     }

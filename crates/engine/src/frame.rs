@@ -13,8 +13,10 @@ pub(crate) struct StationFrame {
     pub axes: Frame,
     /// Height, m.
     pub height_m: f64,
-    /// D at station level is longer than the chord between the feet by this factor.
+    /// D at station level is longer than the chord between the feet by this factor (mean over azimuths).
     pub stretch: f64,
+    /// Inverse squares of that factor eastward, northward and upward.
+    shrink2: Vec3,
     /// 1/R at the station, 1/m, R the Gaussian mean radius.
     pub inv_radius: f64,
 }
@@ -23,15 +25,23 @@ impl StationFrame {
     pub(crate) fn new(lon_deg: f64, lat_deg: f64, height_m: f64) -> Self {
         let (lon, lat) = (lon_deg.to_radians(), lat_deg.to_radians());
         let ellipsoid = Ellipsoid::WGS84;
-        let inv_radius = 1.0
-            / (ellipsoid.meridian_radius_m(lat) * ellipsoid.prime_vertical_radius_m(lat)).sqrt();
+        let (m, n) = (ellipsoid.meridian_radius_m(lat), ellipsoid.prime_vertical_radius_m(lat));
+        let inv_radius = 1.0 / (m * n).sqrt();
         Self {
             foot_m: ellipsoid.foot_ecef_m(lon, lat),
             axes: ellipsoid.local_frame(lon, lat),
             height_m,
             stretch: 1.0 + height_m * inv_radius,
+            shrink2: [n, m, 1.0 / inv_radius].map(|r| (1.0 + height_m / r).powi(-2)),
             inv_radius,
         }
+    }
+
+    /// Chord between the feet, m, of a D given in east, north, up: what distances along the ground are measured by.
+    #[inline]
+    pub(crate) fn chord(&self, d: Vec3) -> f64 {
+        let [e, n, u] = self.shrink2;
+        (d[0] * d[0] * e + d[1] * d[1] * n + d[2] * d[2] * u).sqrt()
     }
 
     /// East, north, up components of an ECEF vector.
@@ -76,8 +86,8 @@ pub(crate) struct TileFrame {
     c1_rate: f64,
     /// 1/M' + 1/N'.
     pub k1: f64,
-    /// Distance from the station to the middle at station level, m.
-    pub distance: f64,
+    /// Chord from the station's foot to the middle, m.
+    pub chord: f64,
     /// No ground of the tile lies farther from the middle than this, m.
     pub radius: f64,
     /// The same by cell of width.
@@ -130,7 +140,7 @@ impl TileFrame {
             b_ratio,
             c1_rate,
             k1: im / fm + ip / fp,
-            distance: d2.sqrt(),
+            chord: station.chord(middle),
             radius,
             radius_per_cell: radius / cells as f64,
         }

@@ -120,9 +120,10 @@ fn add_ray(
         base + rise + t * (slope + t * twist)
     };
     let mut cuts = Cuts::new();
+    let chord = context.station.chord(tile.sight(x + end[0], y + end[1]).d);
     for (zone, &edge) in context.edges.outer.iter().enumerate() {
-        if edge < rho {
-            cuts.push(edge / rho, zone + 1);
+        if edge < chord {
+            cuts.push(edge / chord, zone + 1);
         }
     }
     grade(&mut cuts, height(0.0), slope, rho);

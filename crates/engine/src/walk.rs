@@ -10,7 +10,7 @@ use hillpull_relief::layer::{CellState, Layer, morton_decode};
 use hillpull_relief::moments::{CHILD_SIGNS, Moments};
 
 /// Nodes that a walk is expected to take: sets the share of the tolerance of each.
-const EXPECTED_NODES: f64 = 4000.0;
+const EXPECTED_NODES: f64 = 2000.0;
 /// Nodes expected across zone edges.
 const EXPECTED_CROSSINGS: f64 = 1500.0;
 /// The bound counts errors that fall either way as this many times the root of their summed squares.
@@ -56,6 +56,8 @@ struct Piece {
 /// What a lane still needs after evaluation, besides the kernel's results.
 #[derive(Clone, Copy, Debug, Default)]
 struct Outline {
+    /// Chord to the centroid, m.
+    chord: f64,
     /// No ground of the node lies farther from the centroid, m.
     radius: f64,
     /// Half widths along the line of sight of the node's two sides, m.
@@ -135,7 +137,7 @@ impl<'a> Walk<'a> {
                 }
                 let sight = node_sight(self.station, node);
                 let radius = node.radius_m * self.station.stretch.max(1.0);
-                let distance = sight.d2.sqrt();
+                let distance = self.station.chord(sight.d);
                 let place = self
                     .edges
                     .place((distance - radius).max(0.0), distance + radius);
@@ -208,6 +210,7 @@ impl<'a> Walk<'a> {
             .bend
             .is_some_and(|b| sight.d2.sqrt() - radius < b.radius);
         self.outlines[i] = Outline {
+            chord: self.station.chord(d),
             radius,
             halves: [half, half],
             share_error: UPPER_SHARE_ERROR,
@@ -220,8 +223,8 @@ impl<'a> Walk<'a> {
         let (mx, my) = layer.tile_middle(tile);
         let foot = foot.map(|(col, row)| (col - mx, row - my));
         let place = self.edges.place(
-            (frame.distance - frame.radius).max(0.0),
-            frame.distance + frame.radius,
+            (frame.chord - frame.radius).max(0.0),
+            frame.chord + frame.radius,
         );
         let level = layer.tile_level() as i32;
         let root = Piece {
@@ -248,7 +251,7 @@ impl<'a> Walk<'a> {
                 let place = match place {
                     Whereabouts::Zone(_) => place,
                     _ => {
-                        let (r, radius) = (self.lanes.d2[i].sqrt(), self.outlines[i].radius);
+                        let Outline { chord: r, radius, .. } = self.outlines[i];
                         self.edges.place((r - radius).max(0.0), r + radius)
                     }
                 };
@@ -374,6 +377,7 @@ impl<'a> Walk<'a> {
         let radius =
             frame.radius_per_cell * width * (1.0 + 2.0 * m.ox.abs().max(m.oy.abs()) / width);
         let mut outline = Outline {
+            chord: self.station.chord(d),
             radius,
             halves: [0.5 * width * dx.abs() / r, 0.5 * width * dy.abs() / r],
             share_error: 0.0,
@@ -451,7 +455,7 @@ impl<'a> Walk<'a> {
                 let r = d2.sqrt();
                 let radial = lanes.dmd[i] / d2;
                 // the edge is an arc: its mean over the node's breadth lies nearer than its middle
-                let u = self.edges.outer[zone] - r - 0.5 * (lanes.trace[i] - radial) / r;
+                let u = self.edges.outer[zone] - outline.chord - 0.5 * (lanes.trace[i] - radial) / r;
                 let (share, first) = share_below(u, outline.halves[0], outline.halves[1]);
                 let rise = lanes.dc[i] / lanes.dmd[i] * r;
                 let gradient = 2.0 * r * lanes.f_s[i] + lanes.f_z[i] * rise;

@@ -1,12 +1,11 @@
 //! Zones by ground distance, and the share of a node on either side of an edge.
 
-use crate::frame::StationFrame;
 use hillpull_physics::ellipsoid::chord_from_arc_m;
 
-/// Zone edges as distances at station level.
+/// Zone edges as chords between feet on the ellipsoid.
 #[derive(Clone, Debug)]
 pub(crate) struct Edges {
-    /// Outer edge of each zone, innermost first, m at station level.
+    /// Outer edge of each zone, innermost first, m.
     pub outer: Vec<f64>,
 }
 
@@ -22,11 +21,11 @@ pub(crate) enum Whereabouts {
 }
 
 impl Edges {
-    pub(crate) fn new(station: &StationFrame, zones_m: &[(f64, f64)]) -> Self {
+    pub(crate) fn new(zones_m: &[(f64, f64)]) -> Self {
         Self {
             outer: zones_m
                 .iter()
-                .map(|z| chord_from_arc_m(z.1) * station.stretch)
+                .map(|z| chord_from_arc_m(z.1))
                 .collect(),
         }
     }

@@ -15,7 +15,7 @@ use std::collections::BTreeMap;
 /// Largest side of a tile in cells, and the smallest.
 const TILE_CELLS: (usize, usize) = (64, 4);
 /// A tile's half width stays below this, so that a quadratic places its posts within a centimetre.
-const TILE_HALF_WIDTH_M: f64 = 8000.0;
+const TILE_HALF_WIDTH_M: f64 = 2000.0;
 /// What the fit of positions may miss, m, before tiles are made smaller.
 const PLACE_ERROR_M: f64 = 0.01;
 /// Tiles checked against PROJ.

@@ -1,7 +1,7 @@
 //! Where a tile of cells lies: its ground points, normals and area element as polynomials of row and column.
 //!
 //! Posts are carried through PROJ on a lattice of half tiles; between, the position is a quadratic in the tile's own
-//! column and row. For a tile of half width w the neglected cubic is about w^3 / 6 R^2: 2 mm at 8 km.
+//! column and row. For a tile of half width w the neglected cubic is about w^3 / 6 R^2: 0.03 mm at 2 km.
 
 use hillpull_physics::ellipsoid::{Ellipsoid, Vec3, cross, dot, norm, sub};
 
@@ -107,6 +107,38 @@ fn fit_vec(f: &[[Vec3; 3]; 3], h: f64) -> Quadratic<Vec3> {
     out
 }
 
+/// Lattice coordinates in half widths.
+const LATTICE: [f64; 3] = [-1.0, 0.0, 1.0];
+/// Near the poles longitude is no coordinate to differentiate in.
+const LOWEST_COS_LAT: f64 = 0.05;
+
+/// Area on the ellipsoid of a cell at each lattice point, M N cos(lat) |d(lon, lat)/d(x, y)|: exact for geographic grids,
+/// where the slopes of the quadratic through the feet would be short by h^2 / 6 R^2.
+fn cell_areas(lonlat_rad: &[[[f64; 2]; 3]; 3], half: f64) -> Option<[[f64; 3]; 3]> {
+    let ellipsoid = Ellipsoid::WGS84;
+    let middle = lonlat_rad[1][1][0];
+    let turn = std::f64::consts::TAU;
+    // longitudes from the middle's, so that the antimeridian doesn't cut the tile
+    let lon = lonlat_rad.map(|row| row.map(|p| p[0] - middle - turn * ((p[0] - middle) / turn).round()));
+    let lat = lonlat_rad.map(|row| row.map(|p| p[1]));
+    if lat.iter().flatten().any(|v| v.cos() < LOWEST_COS_LAT) {
+        return None;
+    }
+    let (lon, lat_fit) = (fit(&lon, half), fit(&lat, half));
+    let slopes = |c: &Quadratic<f64>, x: f64, y: f64| {
+        (c[1] + 2.0 * c[3] * x + c[4] * y, c[2] + c[4] * x + 2.0 * c[5] * y)
+    };
+    Some(std::array::from_fn(|j| {
+        std::array::from_fn(|i| {
+            let (x, y) = (LATTICE[i] * half, LATTICE[j] * half);
+            let ((lon_x, lon_y), (lat_x, lat_y)) = (slopes(&lon, x, y), slopes(&lat_fit, x, y));
+            let phi = lat[j][i];
+            let (m, n) = (ellipsoid.meridian_radius_m(phi), ellipsoid.prime_vertical_radius_m(phi));
+            m * n * phi.cos() * (lon_x * lat_y - lon_y * lat_x).abs()
+        })
+    }))
+}
+
 impl TileGeometry {
     /// From the longitudes and latitudes (radians) of the 3 x 3 lattice `[row][col]` of a tile `cells` wide.
     #[must_use]
@@ -123,14 +155,14 @@ impl TileGeometry {
             }
         }
         let foot_m = fit_vec(&foot, half);
-        let mut area = [[0.0; 3]; 3];
-        for (j, row) in area.iter_mut().enumerate() {
-            for (i, a) in row.iter_mut().enumerate() {
-                let (dx, dy) =
-                    quadratic_vec_slopes(&foot_m, (i as f64 - 1.0) * half, (j as f64 - 1.0) * half);
-                *a = norm(cross(dx, dy));
-            }
-        }
+        let area = cell_areas(lonlat_rad, half).unwrap_or_else(|| {
+            LATTICE.map(|y| {
+                LATTICE.map(|x| {
+                    let (dx, dy) = quadratic_vec_slopes(&foot_m, x * half, y * half);
+                    norm(cross(dx, dy))
+                })
+            })
+        });
         let lat = lonlat_rad[1][1][1];
         Self {
             foot_m,
