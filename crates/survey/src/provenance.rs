@@ -14,9 +14,9 @@ pub struct InputFile {
     pub role: String,
     /// As given.
     pub path: PathBuf,
-    /// Length in bytes.
+    /// Length in bytes; 0 if it is not a plain file.
     pub bytes: u64,
-    /// BLAKE3 checksum, 64 hexadecimal digits.
+    /// BLAKE3 checksum, 64 hexadecimal digits; empty if it is not a plain file.
     pub blake3: String,
 }
 
@@ -62,7 +62,8 @@ impl Provenance {
 
     /// Adds an input file, and what belongs to it (the other parts of a shapefile), with their checksums.
     ///
-    /// A folder is listed without checksum.
+    /// What is no plain file (a folder that is a data set, a name that only GDAL understands) is listed without
+    /// checksum.
     ///
     /// # Errors
     /// A file that cannot be read.
@@ -142,13 +143,21 @@ impl Provenance {
                 .map(|(name, value)| (format!("option {name}"), value.clone())),
         );
         for i in &self.inputs {
-            items.push((
-                format!("input {} {}", i.role, i.path.display()),
-                format!("{} bytes, blake3 {}", i.bytes, i.blake3),
-            ));
+            let sum = if i.blake3.is_empty() {
+                "no plain file, no checksum".to_owned()
+            } else {
+                format!("{} bytes, blake3 {}", i.bytes, i.blake3)
+            };
+            items.push((format!("input {} {}", i.role, i.path.display()), sum));
         }
         items
     }
+}
+
+/// A name such as `/vsizip/a.zip/b.tif` or `NETCDF:"a.nc":z`.
+fn is_gdal_name(path: &Path) -> bool {
+    let name = path.to_string_lossy();
+    (name.starts_with("/vsi") || name.contains(':')) && !path.exists()
 }
 
 fn checksum(role: &str, path: &Path) -> Result<InputFile, SurveyError> {
@@ -163,7 +172,7 @@ fn checksum(role: &str, path: &Path) -> Result<InputFile, SurveyError> {
         bytes: 0,
         blake3: String::new(),
     };
-    if path.is_dir() {
+    if path.is_dir() || is_gdal_name(path) {
         return Ok(file);
     }
     let mut hasher = blake3::Hasher::new();
@@ -239,6 +248,9 @@ mod tests {
             "af1349b9f5f9a1a6a0404dea36dcc9499bcb25c9adc112b7cc9a93cae41f3262"
         );
         assert!(p.input("dem", &dir.path().join("none.tif")).is_err());
+        p.input("dem", Path::new("/vsizip/none.zip/none.tif"))
+            .unwrap();
+        assert_eq!(p.inputs[1].blake3, "");
     }
 
     #[test]

@@ -157,9 +157,11 @@ fn what_is_refused_before_the_run() {
         other => panic!("{other}"),
     };
     let check = |name: &str| {
-        OutputTarget::from_path(&folder.path(name))
-            .unwrap()
-            .check(&t, &settings(), &[dem.clone()])
+        OutputTarget::from_path(&folder.path(name)).unwrap().check(
+            &t,
+            &settings(),
+            std::slice::from_ref(&dem),
+        )
     };
     assert_eq!(problem(check("s.csv").unwrap_err()), OutputProblem::IsInput);
     assert_eq!(

@@ -182,6 +182,7 @@ fn files_that_cannot_be_read() {
     for name in ["noise.csv", "noise.gpkg", "noise.shp", "noise"] {
         let error =
             read_stations(&folder.write(name, &noise), &TableOptions::default()).unwrap_err();
+        assert!(!error.to_string().contains("NULL"), "{error}");
         assert!(
             matches!(
                 error,

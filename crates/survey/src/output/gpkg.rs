@@ -1,7 +1,7 @@
 //! Results as a GeoPackage.
 use super::columns::{Layout, NOTES, NOTES_BESIDE_USERS};
 use super::{Outcome, has_notes_column};
-use crate::gdal_log;
+use crate::gdal_log::{self, Listening};
 use crate::provenance::Provenance;
 use crate::table::{Data, FieldType, StationTable, Values};
 use gdal::errors::GdalError;
@@ -27,14 +27,14 @@ pub(crate) fn write_gpkg(
     settings: &Settings,
     provenance: &Provenance,
 ) -> Result<(), String> {
-    gdal_log::listen();
+    let gdal = gdal_log::listen();
     // Dates inside the file are those of the provenance, so that equal runs give equal files.
     let date = "OGR_CURRENT_DATE";
     let _ = gdal::config::set_thread_local_config_option(date, &provenance.written);
     let written = write_layers(path, table, outcomes, settings, provenance);
     let _ = gdal::config::clear_thread_local_config_option(date);
-    written.map_err(|e| gdal_log::detail(&e))?;
-    verify(path, outcomes.len())
+    written.map_err(|e| gdal.detail(&e))?;
+    verify(path, outcomes.len(), &gdal)
 }
 
 fn write_layers(
@@ -201,15 +201,13 @@ fn write_provenance(dataset: &mut Dataset, provenance: &Provenance) -> Result<()
 }
 
 /// Reads the file back: GDAL does not say when closing fails (before version 3.7).
-fn verify(path: &Path, expected: usize) -> Result<(), String> {
+fn verify(path: &Path, expected: usize, gdal: &Listening) -> Result<(), String> {
     let options = DatasetOptions {
-        open_flags: GdalOpenFlags::GDAL_OF_VECTOR,
+        open_flags: GdalOpenFlags::GDAL_OF_VECTOR | GdalOpenFlags::GDAL_OF_VERBOSE_ERROR,
         ..Default::default()
     };
-    let dataset = Dataset::open_ex(path, options).map_err(|e| gdal_log::detail(&e))?;
-    let layer = dataset
-        .layer_by_name(LAYER)
-        .map_err(|e| gdal_log::detail(&e))?;
+    let dataset = Dataset::open_ex(path, options).map_err(|e| gdal.detail(&e))?;
+    let layer = dataset.layer_by_name(LAYER).map_err(|e| gdal.detail(&e))?;
     let found = layer.feature_count();
     if found == expected as u64 {
         Ok(())

@@ -24,12 +24,12 @@ pub(crate) struct Crs {
 impl Crs {
     /// Looks a system up.
     pub(crate) fn new(definition: &str) -> Result<Self, TableProblem> {
-        gdal_log::listen();
+        let gdal = gdal_log::listen();
         let bad = |detail: String| TableProblem::BadCrs {
             crs: definition.to_owned(),
             detail,
         };
-        let srs = SpatialRef::from_definition(definition).map_err(|e| bad(gdal_log::detail(&e)))?;
+        let srs = SpatialRef::from_definition(definition).map_err(|e| bad(gdal.detail(&e)))?;
         let geographic = srs.is_geographic();
         if !geographic && !srs.is_projected() {
             return Err(bad("it is neither geographic nor projected".to_owned()));

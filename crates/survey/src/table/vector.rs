@@ -33,9 +33,12 @@ pub(crate) struct Points {
 
 /// Reads the one layer of a file that can hold stations.
 pub(crate) fn read_vector(path: &Path) -> Result<VectorTable, TableProblem> {
-    gdal_log::listen();
+    let gdal = gdal_log::listen();
+    let not_a_table = |e: GdalError| TableProblem::NotATable {
+        detail: gdal.detail(&e),
+    };
     let options = DatasetOptions {
-        open_flags: GdalOpenFlags::GDAL_OF_VECTOR,
+        open_flags: GdalOpenFlags::GDAL_OF_VECTOR | GdalOpenFlags::GDAL_OF_VERBOSE_ERROR,
         ..Default::default()
     };
     let dataset = Dataset::open_ex(path, options).map_err(not_a_table)?;
@@ -99,12 +102,6 @@ pub(crate) fn read_vector(path: &Path) -> Result<VectorTable, TableProblem> {
         rows,
         points,
     })
-}
-
-fn not_a_table(error: GdalError) -> TableProblem {
-    TableProblem::NotATable {
-        detail: gdal_log::detail(&error),
-    }
 }
 
 /// The only layer, or the only one that is declared to hold points.
