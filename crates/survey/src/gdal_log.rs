@@ -60,7 +60,7 @@ mod tests {
             let gdal = listen();
             let error = SpatialRef::from_epsg(999_999).unwrap_err();
             assert!(
-                gdal.detail(&error).contains("999999"),
+                gdal.detail(&error).contains("crs not found"),
                 "{}",
                 gdal.detail(&error)
             );
