@@ -1,8 +1,8 @@
 //! The program as a user runs it: the real binary, in a folder of its own, on small grids made here.
 
-use gdal::DriverManager;
 use gdal::raster::Buffer;
 use gdal::spatial_ref::SpatialRef;
+use gdal::{DriverManager, Gcp};
 use std::path::{Path, PathBuf};
 use std::process::{Command, Stdio};
 use std::sync::OnceLock;
@@ -143,6 +143,36 @@ impl Folder {
         names
     }
 
+    /// One line for each row of a result: first column, whether there is an effect, `covered`, `notes`.
+    ///
+    /// # Panics
+    /// When the file is no result.
+    #[must_use]
+    pub fn notes(&self, name: &str) -> String {
+        let text = self.read(name);
+        let mut table = csv::Reader::from_reader(text.as_bytes());
+        let header = table.headers().expect("header").clone();
+        let column = |name: &str| header.iter().position(|h| h == name).expect(name);
+        let (effect, covered, notes) = (
+            column("terrain_effect_mgal"),
+            column("covered"),
+            column("notes"),
+        );
+        let line = |row: csv::StringRecord| {
+            let has = if row[effect].is_empty() {
+                "no result"
+            } else {
+                "result"
+            };
+            format!(
+                "{} | {has} | covered {} | {}",
+                &row[0], &row[covered], &row[notes]
+            )
+        };
+        let lines: Vec<String> = table.records().map(|row| line(row.expect("row"))).collect();
+        lines.join("\n")
+    }
+
     /// The program, set to run in the folder with words split at spaces.
     #[must_use]
     pub fn command(&self, words: &str) -> Command {
@@ -202,6 +232,8 @@ pub struct Dem {
     pub epsg: Option<u32>,
     /// x of the western edge and y of the northern edge, in the CRS.
     pub corner: (f64, f64),
+    /// Whether the file states its place by ground control points at the corners, in place of a geotransform.
+    pub control_points: bool,
     /// Distance of the posts, in the CRS.
     pub step: f64,
     /// Columns and rows.
@@ -225,6 +257,7 @@ impl Dem {
         Self {
             epsg,
             corner,
+            control_points: false,
             step,
             size,
             heights_m,
@@ -264,11 +297,29 @@ impl Dem {
             .create_with_band_type::<f32, _>(path, self.size.0, self.size.1, 1)
             .expect("create the DEM");
         let (x, y) = self.corner;
-        set.set_geo_transform(&[x, self.step, 0.0, y, 0.0, -self.step])
-            .expect("place the DEM");
-        if let Some(code) = self.epsg {
-            let crs = SpatialRef::from_epsg(code).expect("EPSG code");
-            set.set_spatial_ref(&crs).expect("CRS of the DEM");
+        let crs = self
+            .epsg
+            .map(|code| SpatialRef::from_epsg(code).expect("EPSG code"));
+        if self.control_points {
+            let (cols, rows) = (self.size.0 as f64, self.size.1 as f64);
+            let corner = |(col, row): (f64, f64)| Gcp {
+                id: format!("{col} {row}"),
+                info: String::new(),
+                pixel: col,
+                line: row,
+                x: x + self.step * col,
+                y: y - self.step * row,
+                z: 0.0,
+            };
+            let corners = [(0.0, 0.0), (cols, 0.0), (cols, rows), (0.0, rows)].map(corner);
+            let crs = crs.expect("CRS of the control points");
+            set.set_gcps(corners.into(), &crs).expect("place the DEM");
+        } else {
+            set.set_geo_transform(&[x, self.step, 0.0, y, 0.0, -self.step])
+                .expect("place the DEM");
+            if let Some(crs) = crs {
+                set.set_spatial_ref(&crs).expect("CRS of the DEM");
+            }
         }
         let data = self
             .heights_m

@@ -1,5 +1,4 @@
 //! DEMs that cannot be used, or not everywhere.
-#![expect(clippy::unwrap_used, reason = "a test stops at the first surprise")]
 
 use hillpull_tests::program::{Dem, Folder, HILL_RUN, refused};
 use insta::assert_snapshot;
@@ -7,14 +6,22 @@ use insta::assert_snapshot;
 #[test]
 fn missing_dem() {
     let folder = Folder::with_survey();
-    assert_snapshot!(refused(&folder, &HILL_RUN.replace("dem.tif", "nowhere.tif")), @"");
+    assert_snapshot!(refused(&folder, &HILL_RUN.replace("dem.tif", "nowhere.tif")), @"
+    error: reading DEM nowhere.tif: no such file
+
+    hint: check the path and the working directory
+    ");
 }
 
 #[test]
 fn not_a_raster() {
     let folder = Folder::with_survey();
     folder.write("dem.tif", "this is not a raster\n");
-    assert_snapshot!(refused(&folder, HILL_RUN), @"");
+    assert_snapshot!(refused(&folder, HILL_RUN), @"
+    error: reading DEM dem.tif: it is not a raster: no format that GDAL knows
+
+    hint: `gdalinfo dem.tif` tells what GDAL makes of it; give a grid of heights
+    ");
 }
 
 #[test]
@@ -22,7 +29,11 @@ fn cut_off_file() {
     let folder = Folder::with_survey();
     let whole = std::fs::read(folder.path("dem.tif")).unwrap();
     std::fs::write(folder.path("dem.tif"), &whole[..whole.len() / 2]).unwrap();
-    assert_snapshot!(refused(&folder, HILL_RUN), @"");
+    assert_snapshot!(refused(&folder, HILL_RUN), @"
+    error: reading DEM dem.tif: it cannot be read: GDAL gives no reason
+
+    hint: `gdalinfo -checksum dem.tif` shows whether the file is whole; fetch or copy it again if it is not
+    ");
 }
 
 #[test]
@@ -35,14 +46,22 @@ fn raster_without_crs() {
             ..Dem::hill()
         },
     );
-    assert_snapshot!(refused(&folder, HILL_RUN), @"");
+    assert_snapshot!(refused(&folder, HILL_RUN), @"
+    error: reading DEM dem.tif: it states no coordinate reference system
+
+    hint: if you know its CRS, assign it: gdal_edit.py -a_srs EPSG:<code> dem.tif
+    ");
 }
 
 #[test]
 fn dem_all_voids() {
     let folder = Folder::with_survey();
     folder.dem("dem.tif", &Dem::hill().change(|_, _, _| f32::NAN));
-    assert_snapshot!(refused(&folder, HILL_RUN), @"");
+    assert_snapshot!(refused(&folder, HILL_RUN), @"
+    error: reading DEM dem.tif: all 3422 posts within reach of the stations are voids
+
+    hint: leave this DEM out, or check its nodata value and mask
+    ");
 }
 
 #[test]
@@ -55,7 +74,11 @@ fn every_dem_out_of_reach() {
             ..Dem::hill()
         },
     );
-    assert_snapshot!(refused(&folder, HILL_RUN), @"");
+    assert_snapshot!(refused(&folder, HILL_RUN), @"
+    error: no DEM lies within reach of the stations: reading DEM dem.tif: it ends 295.0 km short of the reach of the stations; it covers longitude 6.3724 to 6.4267, latitude 46.9056 to 46.9428 degrees
+
+    hint: check the CRS of the DEM, and --crs, --x and --y of the stations
+    ");
 }
 
 #[test]
@@ -72,7 +95,7 @@ fn one_dem_out_of_reach_is_left_out_with_a_warning() {
     let result = folder.read("out.csv");
     let ran = folder.run(&format!("{HILL_RUN} --dem away.tif"));
     assert_eq!((alone.code, ran.code), (Some(0), Some(0)), "{}", ran.stderr);
-    assert_snapshot!(ran.stderr.lines().next().unwrap(), @"");
+    assert_snapshot!(ran.stderr.lines().next().unwrap(), @"warning: reading DEM away.tif: it ends 295.0 km short of the reach of the stations; it covers longitude 6.3724 to 6.4267, latitude 46.9056 to 46.9428 degrees; it is left out");
     assert_eq!(folder.read("out.csv"), result);
 }
 
@@ -85,7 +108,10 @@ fn station_outside_every_dem_has_a_note_and_the_run_goes_on() {
     );
     let ran = folder.run(HILL_RUN);
     assert_eq!(ran.code, Some(1), "{}", ran.stderr);
-    assert_snapshot!(notes(&folder), @"");
+    assert_snapshot!(folder.notes("out.csv"), @"
+    A | result | covered 0.9999 | no DEM for under 0.1 % of zone 230 to 800 m
+    B | no result | covered  | no DEM covers the station
+    ");
 }
 
 #[test]
@@ -98,7 +124,10 @@ fn no_station_on_any_dem() {
     );
     let ran = folder.run(HILL_RUN);
     assert_eq!(ran.code, Some(1), "{}", ran.stderr);
-    assert_snapshot!(notes(&folder), @"");
+    assert_snapshot!(folder.notes("out.csv"), @"
+    A | no result | covered  | no DEM covers the station
+    B | no result | covered  | no DEM covers the station
+    ");
 }
 
 #[test]
@@ -116,7 +145,11 @@ fn void_near_a_station_has_a_note() {
     );
     let ran = folder.run(HILL_RUN);
     assert_eq!(ran.code, Some(1), "{}", ran.stderr);
-    assert_snapshot!(notes(&folder), @"");
+    assert_snapshot!(folder.notes("out.csv"), @"
+    top | result | covered 0.9689 | no DEM for 10.0 % of zone 0 to 230 m, 2.5 % of zone 230 to 800 m
+    flank | no result | covered  | no DEM covers the station
+    foot | result | covered 0.9941 | no DEM for 0.6 % of zone 230 to 800 m
+    ");
 }
 
 #[test]
@@ -128,7 +161,11 @@ fn a_wrong_datum_is_suspected_where_heights_misfit() {
     );
     let ran = folder.run(HILL_RUN);
     assert_eq!(ran.code, Some(0), "{}", ran.stderr);
-    assert_snapshot!(notes(&folder), @"");
+    assert_snapshot!(ran.stderr.lines().next().unwrap(), @"");
+    assert_snapshot!(folder.notes("out.csv"), @"
+    A | result | covered 1.0000 | station height is 52.0 m above the DEM
+    B | result | covered 0.9999 | no DEM for under 0.1 % of zone 230 to 800 m; station height is 56.6 m above the DEM
+    ");
 }
 
 #[test]
@@ -138,40 +175,43 @@ fn ground_below_zero_needs_a_statement() {
         "dem.tif",
         &Dem::hill().change(|col, _, h| if col == 50 { h - 1400.0 } else { h }),
     );
-    assert_snapshot!(refused(&folder, HILL_RUN), @"");
-    assert_snapshot!(refused(&folder, &format!("{HILL_RUN} --below-zero sea")), @"");
+    assert_snapshot!(refused(&folder, HILL_RUN), @"
+    error: DEM dem.tif has 58 of 3422 posts below zero, the lowest at -399.7 m, and nothing says what that ground is
+
+    hint: if it is dry land, say --below-zero land; a sea cannot be filled in this version
+    ");
+    assert_snapshot!(refused(&folder, &format!("{HILL_RUN} --below-zero sea")), @"
+    error: --below-zero sea: filling the sea is not available in this version
+
+    hint: use a DEM that covers land only, or whose sea surface is given as 0 m; if all ground below the datum is dry, say --below-zero land
+    ");
     let ran = folder.run(&format!("{HILL_RUN} --below-zero land"));
     assert_eq!(ran.code, Some(0), "{}", ran.stderr);
 }
 
-/// Station, effect present or not, covered and notes of `out.csv`.
-fn notes(folder: &Folder) -> String {
-    let text = folder.read("out.csv");
-    let mut table = csv::Reader::from_reader(text.as_bytes());
-    let header = table.headers().unwrap().clone();
-    let column = |name: &str| {
-        header
-            .iter()
-            .position(|h| h == name)
-            .unwrap_or_else(|| panic!("no column {name}"))
-    };
-    let (effect, covered, notes) = (
-        column("terrain_effect_mgal"),
-        column("covered"),
-        column("notes"),
+#[test]
+fn resampling_is_done_only_where_it_is_needed() {
+    let folder = Folder::with_survey();
+    let plain = folder.run(&HILL_RUN.replace("out.csv", "-"));
+    let ran = folder.run(&format!("{} --resample", HILL_RUN.replace("out.csv", "-")));
+    assert_eq!(ran.stdout, plain.stdout);
+    assert!(!ran.stderr.contains("warning"), "{}", ran.stderr);
+
+    // The same posts, placed by ground control points at the corners alone.
+    folder.dem(
+        "points.tif",
+        &Dem {
+            control_points: true,
+            ..Dem::hill()
+        },
     );
-    let mut lines = Vec::new();
-    for row in table.records() {
-        let row = row.unwrap();
-        let has = if row[effect].is_empty() {
-            "no result"
-        } else {
-            "result"
-        };
-        lines.push(format!(
-            "{} | {has} | covered {} | {}",
-            &row[0], &row[covered], &row[notes]
-        ));
-    }
-    lines.join("\n")
+    let words = HILL_RUN.replace("dem.tif", "points.tif");
+    assert_snapshot!(refused(&folder, &words), @"
+    error: reading DEM points.tif: it says where its posts lie only by 4 ground control points, not by a regular grid
+
+    hint: --resample puts it onto a working grid, at the cost of some smoothing
+    ");
+    let ran = folder.run(&format!("{words} --resample"));
+    assert_eq!(ran.code, Some(0), "{}", ran.stderr);
+    assert_snapshot!(ran.stderr.lines().next().unwrap(), @"warning: DEM points.tif: heights were resampled onto a working grid (bilinear, spacing 50.000000 in WGS 84 / UTM zone 32N); this smooths the ground and loses terrain effect, most near stations in steep relief");
 }

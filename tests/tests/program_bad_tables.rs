@@ -14,7 +14,11 @@ fn message(table: &str) -> String {
 fn missing_table() {
     let folder = Folder::with_survey();
     let words = HILL_RUN.replace("stations.csv", "nowhere.csv");
-    assert_snapshot!(refused(&folder, &words), @"");
+    assert_snapshot!(refused(&folder, &words), @"
+    error: cannot read the station table nowhere.csv: No such file or directory (os error 2)
+
+    hint: check the spelling of the path; relative paths start at the current folder
+    ");
 }
 
 #[test]
@@ -22,41 +26,71 @@ fn a_folder_is_no_table() {
     let folder = Folder::with_survey();
     std::fs::create_dir(folder.path("stations")).unwrap();
     let words = HILL_RUN.replace("stations.csv", "stations");
-    assert_snapshot!(refused(&folder, &words), @"");
+    assert_snapshot!(refused(&folder, &words), @"
+    error: station table stations: it is neither a text table nor a vector layer: GDAL method 'GDALOpenEx' returned a NULL pointer. Error msg: ''
+
+    hint: give a CSV file (comma, semicolon or tab, UTF-8) or a point layer that GDAL reads
+    ");
 }
 
 #[test]
 fn x_and_y_without_crs() {
     let folder = Folder::with_survey();
     let words = HILL_RUN.replace("--crs EPSG:32632", "");
-    assert_snapshot!(refused(&folder, &words), @"");
+    assert_snapshot!(refused(&folder, &words), @r#"
+    error: station table stations.csv: columns "easting" and "northing" hold coordinates without a coordinate reference system
+
+    hint: say which system with --crs, such as --crs EPSG:32632; for degrees on WGS 84 --crs EPSG:4326
+    "#);
 }
 
 #[test]
 fn unknown_crs() {
     let folder = Folder::with_survey();
     let words = HILL_RUN.replace("EPSG:32632", "EPSG:999999");
-    assert_snapshot!(refused(&folder, &words), @"");
+    assert_snapshot!(refused(&folder, &words), @r#"
+    error: station table stations.csv: coordinate reference system "EPSG:999999" cannot be used: PROJ: proj_create_from_database: crs not found
+
+    hint: give an EPSG code (EPSG:32632), a PROJ string or WKT with --crs
+    "#);
 }
 
 #[test]
-fn height_missing() {
-    assert_snapshot!(message("station,easting,northing,height\nA,600025,5200025,1300\nB,600325,5200025,\n"), @"");
+fn heights_missing_or_absurd_leave_the_others_their_results() {
+    let folder = Folder::with_survey();
+    folder.write(
+        "stations.csv",
+        "station,easting,northing,height\nA,600025,5200025,1300\nB,600325,5200025,\nC,600325,5200025,NaN\nD,600325,5200025,high\n\
+         E,600325,5200025,123456\nF,600325,5200025,1230\n",
+    );
+    let ran = folder.run(HILL_RUN);
+    assert_eq!(ran.code, Some(1), "{}", ran.stderr);
+    assert_snapshot!(folder.notes("out.csv"), @"
+    A | result | covered 0.9999 | no DEM for under 0.1 % of zone 230 to 800 m
+    B | no result | covered  | height missing
+    C | no result | covered  | height missing
+    D | no result | covered  | height is not a number
+    E | no result | covered  | height 123456 m is absurd
+    F | result | covered 0.9999 | no DEM for under 0.1 % of zone 230 to 800 m
+    ");
 }
 
 #[test]
-fn height_not_a_number() {
-    assert_snapshot!(message("station,easting,northing,height\nA,600025,5200025,NaN\nB,600325,5200025,high\n"), @"");
-}
+fn no_height_at_all() {
+    assert_snapshot!(message("station,easting,northing,height\nA,600025,5200025,NaN\nB,600325,5200025,\n"), @"
+    error: station table stations.csv: none of the 2 stations can be used; row 2, station A: height missing
 
-#[test]
-fn height_absurd() {
-    assert_snapshot!(message("station,easting,northing,height\nA,600025,5200025,1300\nB,600325,5200025,123456\n"), @"");
+    hint: check the columns; --x, --y and --height name others
+    ");
 }
 
 #[test]
 fn duplicate_names() {
-    assert_snapshot!(message("station,easting,northing,height\nA,600025,5200025,1300\nB,600325,5200025,1230\nA,600025,5199225,1075\n"), @"");
+    assert_snapshot!(message("station,easting,northing,height\nA,600025,5200025,1300\nB,600325,5200025,1230\nA,600025,5199225,1075\n"), @"
+    error: station table stations.csv: station A stands in 2 rows: 2, 4
+
+    hint: give every station its own name, or name another column with --id
+    ");
 }
 
 #[test]
@@ -67,7 +101,26 @@ fn longitude_and_latitude_swapped() {
         "station,lon,lat,height\nA,46.95,10.31,1300\nB,46.94,10.32,1230\n",
     );
     let words = HILL_RUN.replace("--crs EPSG:32632", "");
-    assert_snapshot!(refused(&folder, &words), @"");
+    assert_snapshot!(refused(&folder, &words), @"
+    error: no DEM lies within reach of the stations: reading DEM dem.tif: it ends 5167.6 km short of the reach of the stations; it covers longitude 10.2877 to 10.3411, latitude 46.9279 to 46.9645 degrees
+
+    hint: the stations fit with longitude and latitude swapped: check the two columns, or name them with --x and --y
+    ");
+}
+
+#[test]
+fn longitude_and_latitude_swapped_and_out_of_range() {
+    let folder = Folder::with_survey();
+    folder.write(
+        "stations.csv",
+        "station,lon,lat,height\nA,-33.91,151.21,1300\nB,-33.92,151.22,1230\n",
+    );
+    let words = HILL_RUN.replace("--crs EPSG:32632", "");
+    assert_snapshot!(refused(&folder, &words), @"
+    error: station table stations.csv: longitude and latitude look swapped: row 2, station A has latitude 151.21, and every station fits the other way round
+
+    hint: swap the names of the two columns, or name them with --x and --y
+    ");
 }
 
 #[test]
@@ -75,36 +128,70 @@ fn latitude_out_of_range() {
     let folder = Folder::with_survey();
     folder.write(
         "stations.csv",
-        "station,lon,lat,height\nA,10.31,46.95,1300\nB,10.31,96.95,1230\n",
+        "station,lon,lat,height\nA,10.31,46.95,1300\nB,110.31,146.95,1230\n",
     );
     let words = HILL_RUN.replace("--crs EPSG:32632", "");
-    assert_snapshot!(refused(&folder, &words), @"");
+    assert_snapshot!(refused(&folder, &words), @"
+    error: station table stations.csv: row 3, station B: latitude 146.95 is out of range (-90 to 90 degrees)
+
+    hint: longitudes and latitudes are degrees; for coordinates in metres give --crs and name the columns with --x and --y
+    ");
+}
+
+#[test]
+fn metres_taken_for_degrees() {
+    let folder = Folder::with_survey();
+    assert_snapshot!(refused(&folder, &HILL_RUN.replace("EPSG:32632", "EPSG:4326")), @"
+    error: station table stations.csv: row 2, station top: latitude 5200025 is out of range (-90 to 90 degrees)
+
+    hint: longitudes and latitudes are degrees; for coordinates in metres give --crs and name the columns with --x and --y
+    ");
 }
 
 #[test]
 fn empty_table() {
-    assert_snapshot!(message(""), @"");
+    assert_snapshot!(message(""), @"
+    error: station table stations.csv: the file is empty
+
+    hint: a station table has a header row and one row per station: station, lon, lat, height
+    ");
 }
 
 #[test]
 fn header_only() {
-    assert_snapshot!(message("station,easting,northing,height\n"), @"");
+    assert_snapshot!(message("station,easting,northing,height\n"), @"
+    error: station table stations.csv: there are no stations in it, only column names
+
+    hint: a station table has a header row and one row per station: station, lon, lat, height
+    ");
 }
 
 #[test]
 fn ragged_row() {
-    assert_snapshot!(message("station,easting,northing,height\nA,600025,5200025,1300\nB,600325,5200025\n"), @"");
+    assert_snapshot!(message("station,easting,northing,height\nA,600025,5200025,1300\nB,600325,5200025\n"), @"
+    error: station table stations.csv: row 3 has 3 fields, the header has 4
+
+    hint: give every row as many separators as the header; put fields that hold a separator in quotes
+    ");
 }
 
 #[test]
 fn no_height_column() {
-    assert_snapshot!(message("station,easting,northing,remark\nA,600025,5200025,summit\n"), @"");
+    assert_snapshot!(message("station,easting,northing,remark\nA,600025,5200025,summit\n"), @"
+    error: station table stations.csv: no column for the height; columns present: station, easting, northing, remark
+
+    hint: name the column with --height
+    ");
 }
 
 #[test]
 fn named_column_missing() {
     let folder = Folder::with_survey();
-    assert_snapshot!(refused(&folder, &format!("{HILL_RUN} --height heigth")), @"");
+    assert_snapshot!(refused(&folder, &format!("{HILL_RUN} --height heigth")), @r#"
+    error: station table stations.csv: no column is called "heigth" (given by --height); columns present: station, easting, northing, height, remark
+
+    hint: give --height one of the columns present
+    "#);
 }
 
 #[test]
@@ -115,5 +202,9 @@ fn not_text() {
         [0_u8, 159, 146, 150, 0, 10, 255, 254],
     )
     .unwrap();
-    assert_snapshot!(refused(&folder, HILL_RUN), @"");
+    assert_snapshot!(refused(&folder, HILL_RUN), @"
+    error: station table stations.csv: it is neither a text table nor a vector layer: it holds zero bytes (binary, or text in UTF-16)
+
+    hint: give a CSV file (comma, semicolon or tab, UTF-8) or a point layer that GDAL reads
+    ");
 }

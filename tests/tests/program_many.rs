@@ -35,7 +35,11 @@ fn the_last_row_repeats_a_name() {
     let (folder, mut table) = million();
     table.push_str("S17,600100,5200100,905\n");
     folder.write("stations.csv", &table);
-    assert_snapshot!(refused(&folder, RUN), @"");
+    assert_snapshot!(refused(&folder, RUN), @"
+    error: station table stations.csv: station S17 stands in 2 rows: 19, 1000002
+
+    hint: give every station its own name, or name another column with --id
+    ");
 }
 
 #[test]
@@ -43,7 +47,11 @@ fn the_last_row_is_ragged() {
     let (folder, mut table) = million();
     table.push_str("S1000000,600100,5200100\n");
     folder.write("stations.csv", &table);
-    assert_snapshot!(refused(&folder, RUN), @"");
+    assert_snapshot!(refused(&folder, RUN), @"
+    error: station table stations.csv: row 1000002 has 3 fields, the header has 4
+
+    hint: give every row as many separators as the header; put fields that hold a separator in quotes
+    ");
 }
 
 #[test]

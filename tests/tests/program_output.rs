@@ -12,20 +12,32 @@ const OLD: &str = "an earlier result\n";
 #[test]
 fn suffix_unknown() {
     let folder = Folder::with_survey();
-    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "out.xls")), @"");
+    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "out.xls")), @"
+    error: output out.xls: its suffix says no format that can be written
+
+    hint: end the name with .csv or .gpkg, or use - for CSV on standard output
+    ");
 }
 
 #[test]
 fn folder_missing() {
     let folder = Folder::with_survey();
-    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "results/out.csv")), @"");
+    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "results/out.csv")), @"
+    error: output results/out.csv: the folder results does not exist
+
+    hint: make the folder first
+    ");
 }
 
 #[test]
 fn output_is_a_folder() {
     let folder = Folder::with_survey();
     std::fs::create_dir(folder.path("results.csv")).unwrap();
-    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "results.csv")), @"");
+    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "results.csv")), @"
+    error: output results.csv: it exists and is not a file that could be replaced
+
+    hint: name a file, or use - for CSV on standard output
+    ");
 }
 
 #[test]
@@ -37,14 +49,22 @@ fn output_read_only() {
         .permissions();
     permissions.set_readonly(true);
     std::fs::set_permissions(folder.path("kept.csv"), permissions).unwrap();
-    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "kept.csv")), @"");
+    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "kept.csv")), @"
+    error: output kept.csv: it exists and is read-only
+
+    hint: make it writable or choose another name
+    ");
     assert_eq!(folder.read("kept.csv"), OLD);
 }
 
 #[test]
 fn output_is_an_input() {
     let folder = Folder::with_survey();
-    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "stations.csv")), @"");
+    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "stations.csv")), @"
+    error: output stations.csv: it is also an input of this run
+
+    hint: choose another name for the output
+    ");
 }
 
 #[test]
@@ -54,7 +74,11 @@ fn result_column_already_there() {
         "stations.csv",
         "station,easting,northing,height,terrain_effect_mgal\nA,600025,5200025,1300,-1.5\n",
     );
-    assert_snapshot!(refused(&folder, HILL_RUN), @"");
+    assert_snapshot!(refused(&folder, HILL_RUN), @r#"
+    error: output out.csv: the station table already has a column "terrain_effect_mgal", which is the name of a result
+
+    hint: rename or remove that column in the station table (is it the output of an earlier run?)
+    "#);
 }
 
 /// A run with an earlier `out.csv` in the folder failed: code 3, the earlier output as it was, no file added.
@@ -81,7 +105,11 @@ fn disk_full_in_the_middle_of_writing() {
         .args(program.get_args());
     let ran = folder.ran(&shell.output().unwrap());
     failed(&folder, &before, &ran);
-    assert_snapshot!(without_temporary_name(&ran.stderr), @"");
+    assert_snapshot!(ran.stderr, @"
+    error: cannot write out.csv: File too large (os error 27)
+
+    hint: free some space or write to another disk; an output that existed before is unchanged
+    ");
 }
 
 /// The same with a real full disk, where the test may mount one.
@@ -131,7 +159,11 @@ fn standard_output_full() {
         .unwrap();
     let ran = folder.ran(&out);
     assert_eq!(ran.code, Some(3));
-    assert_snapshot!(ran.stderr, @"");
+    assert_snapshot!(ran.stderr, @"
+    error: cannot write to standard output: No space left on device (os error 28)
+
+    hint: free some space or write to another disk; an output that existed before is unchanged
+    ");
 }
 
 #[test]
@@ -173,7 +205,7 @@ fn interrupt_leaves_the_earlier_output_and_no_litter() {
         "it went on for {:?}",
         asked.elapsed()
     );
-    assert_snapshot!(folder.ran(&child.wait_with_output().unwrap()).stderr, @"");
+    assert_snapshot!(folder.ran(&child.wait_with_output().unwrap()).stderr, @"error: interrupted, nothing was written");
     assert_eq!(folder.read("out.csv"), OLD);
     assert_eq!(folder.files(), before);
 }
@@ -261,17 +293,4 @@ fn with_many_stations(count: usize) -> Folder {
     }
     folder.write("stations.csv", &table);
     folder
-}
-
-/// Temporary names differ from run to run.
-fn without_temporary_name(text: &str) -> String {
-    text.split_inclusive([' ', '\n', ':'])
-        .map(|word| {
-            if word.contains(".tmp") {
-                word.split("/.tmp").next().unwrap_or(word).to_owned() + "/[temporary]"
-            } else {
-                word.to_owned()
-            }
-        })
-        .collect()
 }

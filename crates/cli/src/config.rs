@@ -166,7 +166,7 @@ fn settings(
     tolerance: Option<f64>,
 ) -> Result<Settings, Stop> {
     let density_kg_m3 = density.unwrap_or(constants::DENSITY_ROCK_KG_M3);
-    positive("--density", density_kg_m3)?;
+    positive("--density", density_kg_m3, "kg/m3; rock is usually 2670")?;
     if density_kg_m3 != 1.0
         && !(LEAST_DENSITY_KG_M3..=GREATEST_DENSITY_KG_M3).contains(&density_kg_m3)
     {
@@ -176,7 +176,11 @@ fn settings(
         .hint("densities are in kg/m3: 2.67 g/cm3 is 2670; for effects per unit density use 1"));
     }
     let big_g = big_g.unwrap_or(constants::G_CODATA_2018);
-    positive("--big-g", big_g)?;
+    positive(
+        "--big-g",
+        big_g,
+        "m3 kg-1 s-2; leave it out for CODATA 2018",
+    )?;
     if !(6e-11..7e-11).contains(&big_g) {
         return Err(Stop::bad(format!(
             "--big-g {big_g:e} is not the gravitational constant in m3 kg-1 s-2"
@@ -184,7 +188,11 @@ fn settings(
         .hint("CODATA 2018 gives 6.6743e-11, the default"));
     }
     let outer_radius_m = outer.unwrap_or(constants::OUTER_RADIUS_M);
-    positive("--outer", outer_radius_m)?;
+    positive(
+        "--outer",
+        outer_radius_m,
+        "m along the ground; usual is 166735",
+    )?;
     if outer_radius_m > GREATEST_OUTER_M {
         return Err(Stop::bad(format!(
             "--outer {outer_radius_m} m is beyond {GREATEST_OUTER_M} m"
@@ -192,7 +200,7 @@ fn settings(
         .hint("the radius is in metres along the ground; usual is 166735"));
     }
     let tolerance_ugal = tolerance.unwrap_or(DEFAULT_TOLERANCE_UGAL);
-    positive("--tolerance", tolerance_ugal)?;
+    positive("--tolerance", tolerance_ugal, "µGal; usual is 1")?;
     Ok(Settings {
         density_kg_m3,
         big_g,
@@ -203,13 +211,14 @@ fn settings(
     })
 }
 
-fn positive(option: &str, value: f64) -> Result<(), Stop> {
+fn positive(option: &str, value: f64, unit: &str) -> Result<(), Stop> {
     if value.is_finite() && value > 0.0 {
         return Ok(());
     }
-    Err(Stop::bad(format!(
-        "{option} {value}: a number above zero is needed"
-    )))
+    Err(
+        Stop::bad(format!("{option} {value}: a number above zero is needed"))
+            .hint(format!("{option} is in {unit}")),
+    )
 }
 
 fn zone_edges(given: Option<Vec<f64>>, outer_radius_m: f64) -> Result<Vec<f64>, Stop> {
@@ -220,7 +229,11 @@ fn zone_edges(given: Option<Vec<f64>>, outer_radius_m: f64) -> Result<Vec<f64>, 
             .collect());
     };
     for edge in &edges {
-        positive("--zones", *edge)?;
+        positive(
+            "--zones",
+            *edge,
+            "m along the ground; usual is 230,5240,28800",
+        )?;
         if *edge >= outer_radius_m {
             return Err(Stop::bad(format!("--zones: the edge {edge} m is not inside the outer radius of {outer_radius_m} m"))
                 .hint("leave that edge out (the outer radius closes the last zone by itself), or give a larger --outer"));

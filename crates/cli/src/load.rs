@@ -31,12 +31,7 @@ pub(crate) fn grids(
         }
     }
     if grids.is_empty() {
-        let all: Vec<String> = away.iter().map(ReliefError::to_string).collect();
-        return Err(Stop::bad(format!(
-            "no DEM lies within reach of the stations: {}",
-            all.join("; ")
-        ))
-        .hint("check the CRS of the DEM, and --crs, --x and --y of the stations"));
+        return Err(out_of_reach(config, &places, &away));
     }
     for error in away {
         messages.warning(format!("{error}; it is left out"));
@@ -77,6 +72,33 @@ fn read_one(
     grid
 }
 
+/// No DEM is of use. The commonest reason that can be told is longitude and latitude swapped.
+fn out_of_reach(config: &RunConfig, places: &[(f64, f64)], away: &[ReliefError]) -> Stop {
+    let all: Vec<String> = away.iter().map(ReliefError::to_string).collect();
+    let stop = Stop::bad(format!(
+        "no DEM lies within reach of the stations: {}",
+        all.join("; ")
+    ));
+    let swapped: Vec<(f64, f64)> = places
+        .iter()
+        .take(1)
+        .map(|(lon, lat)| (*lat, *lon))
+        .collect();
+    // A few posts around the first station tell.
+    let options = ReadOptions {
+        reach: Reach::around(&swapped, 1.0),
+        ..ReadOptions::default()
+    };
+    if config
+        .dems
+        .iter()
+        .any(|path| read_grid(path, &options).is_ok())
+    {
+        return stop.hint("the stations fit with longitude and latitude swapped: check the two columns, or name them with --x and --y");
+    }
+    stop.hint("check the CRS of the DEM, and --crs, --x and --y of the stations")
+}
+
 /// Whether the posts of a DEM lie in no regular grid, so that only a working grid makes it usable.
 fn mended_by_resampling(fault: &Fault) -> bool {
     matches!(fault, Fault::NoPlacement { .. } | Fault::Unplaceable { .. })
@@ -91,7 +113,7 @@ fn ask_about_ground_below_zero(grids: &[Grid]) -> Result<(), Stop> {
         if let (1.., Some(lowest_m)) = (heights.below_zero, heights.lowest_m) {
             let posts = grid.heights_m.len() - heights.voids;
             found.push(format!(
-                "DEM {} has {} of {posts} posts below zero, the lowest at {lowest_m} m",
+                "DEM {} has {} of {posts} posts below zero, the lowest at {lowest_m:.1} m",
                 grid.label, heights.below_zero
             ));
         }

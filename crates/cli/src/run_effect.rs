@@ -11,6 +11,7 @@ use crate::load;
 use crate::messages::Messages;
 use crate::progress::Progress;
 use crate::summary;
+use hillpull_engine::Ground;
 use hillpull_relief::Relief;
 use hillpull_survey::{
     Outcome, OutputTarget, Provenance, StationTable, join, read_stations, write_effects,
@@ -18,6 +19,10 @@ use hillpull_survey::{
 use std::path::PathBuf;
 use std::sync::atomic::{AtomicBool, Ordering};
 use std::time::Instant;
+
+/// A median misfit between stations and DEM beyond which a mistaken datum or unit is suspected, metres. Geoid heights,
+/// the commonest mix-up, reach some tens of metres (common practice, no source).
+const SHARED_MISFIT_M: f64 = 20.0;
 
 /// Runs the command.
 pub(crate) fn run(args: &EffectArgs, messages: Messages) -> Result<Exit, Stop> {
@@ -69,10 +74,16 @@ pub(crate) fn run(args: &EffectArgs, messages: Messages) -> Result<Exit, Stop> {
 
     let outcomes = join(&table, results, &config.settings, config.ground);
     write(&target, &table, &outcomes, &config, &provenance)?;
-    let written = match &target {
-        OutputTarget::Stdout => "standard output".to_owned(),
-        OutputTarget::Csv(path) | OutputTarget::Gpkg(path) => path.display().to_string(),
+    let written = match (target.path(), target.provenance_path()) {
+        (None, _) => "standard output".to_owned(),
+        (Some(path), None) => path.display().to_string(),
+        (Some(path), Some(beside)) => {
+            format!("{}, provenance in {}", path.display(), beside.display())
+        }
     };
+    if let Some(text) = doubt_about_heights(&outcomes, config.ground) {
+        messages.warning(text);
+    }
     let run = summary::Run {
         table: &table,
         outcomes: &outcomes,
@@ -130,6 +141,27 @@ fn provenance(config: &RunConfig, target: &OutputTarget) -> Result<Provenance, S
         }
     }
     Ok(provenance)
+}
+
+/// A misfit that most stations share is no matter of the DEM's resolution.
+fn doubt_about_heights(outcomes: &[Outcome], ground: Ground) -> Option<String> {
+    if ground == Ground::Given {
+        return None;
+    }
+    let mut misfits_m: Vec<f64> = outcomes
+        .iter()
+        .filter_map(|o| o.effect.as_ref())
+        .map(|e| e.height_misfit_m)
+        .collect();
+    misfits_m.sort_by(f64::total_cmp);
+    let median_m = *misfits_m.get(misfits_m.len() / 2)?;
+    (median_m.abs() > SHARED_MISFIT_M).then(|| {
+        let side = if median_m > 0.0 { "above" } else { "below" };
+        format!(
+            "half of the stations lie {:.0} m or more {side} the DEM: check vertical datum and unit of both, and the position of the stations",
+            median_m.abs()
+        )
+    })
 }
 
 fn write(
