@@ -63,7 +63,7 @@ pub struct Origin {
 }
 
 /// What the heights of a grid range over.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
 pub struct HeightSummary {
     /// Lowest height, metres; None if all posts are voids.
     pub lowest_m: Option<f32>,
@@ -73,6 +73,56 @@ pub struct HeightSummary {
     pub below_zero: usize,
     /// Voids.
     pub voids: usize,
+}
+
+impl HeightSummary {
+    /// Of some heights, NaN for voids. Eight at a time, so that the loop vectorises.
+    pub(crate) fn of(heights_m: &[f32]) -> Self {
+        const LANES: usize = 8;
+        let mut low = [f32::INFINITY; LANES];
+        let mut high = [f32::NEG_INFINITY; LANES];
+        let mut below_zero = [0_u32; LANES];
+        let mut voids = [0_u32; LANES];
+        let mut take = |lane: usize, h: f32| {
+            // a comparison with NaN is false
+            low[lane] = if h < low[lane] { h } else { low[lane] };
+            high[lane] = if h > high[lane] { h } else { high[lane] };
+            below_zero[lane] += u32::from(h < 0.0);
+            voids[lane] += u32::from(h.is_nan());
+        };
+        let (eights, rest) = heights_m.as_chunks::<LANES>();
+        for eight in eights {
+            for (lane, &h) in eight.iter().enumerate() {
+                take(lane, h);
+            }
+        }
+        for &h in rest {
+            take(0, h);
+        }
+        let count = |lanes: [u32; LANES]| lanes.iter().map(|&n| n as usize).sum();
+        let voids = count(voids);
+        let any = voids < heights_m.len();
+        Self {
+            lowest_m: any.then(|| low.into_iter().fold(f32::INFINITY, f32::min)),
+            highest_m: any.then(|| high.into_iter().fold(f32::NEG_INFINITY, f32::max)),
+            below_zero: count(below_zero),
+            voids,
+        }
+    }
+
+    /// Of these heights and those.
+    pub(crate) fn and(self, other: Self) -> Self {
+        let either = |a: Option<f32>, b: Option<f32>, pick: fn(f32, f32) -> f32| match (a, b) {
+            (Some(a), Some(b)) => Some(pick(a, b)),
+            (a, b) => a.or(b),
+        };
+        Self {
+            lowest_m: either(self.lowest_m, other.lowest_m, f32::min),
+            highest_m: either(self.highest_m, other.highest_m, f32::max),
+            below_zero: self.below_zero + other.below_zero,
+            voids: self.voids + other.voids,
+        }
+    }
 }
 
 /// A box of longitude and latitude, degrees on WGS 84. East may pass 180 where the box crosses the antimeridian.
@@ -135,30 +185,10 @@ impl Grid {
     #[must_use]
     pub fn height_summary(&self) -> HeightSummary {
         // minimum, maximum and counts do not depend on the order they are taken in
-        let (low, high, below_zero, voids) = self
-            .heights_m
+        self.heights_m
             .par_chunks(1 << 16)
-            .map(|chunk| {
-                let mut part = (f32::INFINITY, f32::NEG_INFINITY, 0, 0);
-                for &h in chunk {
-                    part.0 = part.0.min(h);
-                    part.1 = part.1.max(h);
-                    part.2 += usize::from(h < 0.0);
-                    part.3 += usize::from(h.is_nan());
-                }
-                part
-            })
-            .reduce(
-                || (f32::INFINITY, f32::NEG_INFINITY, 0, 0),
-                |a, b| (a.0.min(b.0), a.1.max(b.1), a.2 + b.2, a.3 + b.3),
-            );
-        let any = voids < self.heights_m.len();
-        HeightSummary {
-            lowest_m: any.then_some(low),
-            highest_m: any.then_some(high),
-            below_zero,
-            voids,
-        }
+            .map(HeightSummary::of)
+            .reduce(HeightSummary::default, HeightSummary::and)
     }
 
     /// Lowest height, metres; None if all posts are voids.

@@ -73,6 +73,43 @@ fn grads_from_paris_on_another_datum() {
 }
 
 #[test]
+fn another_datum_from_a_file_and_a_datum_nobody_knows() {
+    let dir = folder();
+    let read_in = |name: &str, crs| {
+        let shape = Shape {
+            rows: 3,
+            cols: 3,
+            edges: [6.5, 1.0, 0.0, 51.5, 0.0, -1.0],
+            crs: Some(crs),
+        };
+        read(&shape.geotiff(&dir.path().join(name), vec![1_f32; 9], |_| {}))
+    };
+    // Bessel 1841 with a shift of three made-up parameters that the file carries itself
+    let grid = read_in(
+        "a.tif",
+        "+proj=longlat +ellps=bessel +towgs84=582,105,414,0,0,0,0 +type=crs",
+    );
+    let bessel = Ellipsoid::from_inverse_flattening(6_377_397.155, 299.152_812_8);
+    let foot = bessel.foot_ecef_m(8_f64.to_radians(), 50_f64.to_radians());
+    let (lon, lat) = Ellipsoid::WGS84.lonlat_rad(add(foot, [582.0, 105.0, 414.0]));
+    let found = lonlat_deg(&grid, 1.0, 1.0);
+    assert_lonlat(found, lon.to_degrees(), lat.to_degrees(), 1e-7);
+    assert_eq!(grid.origin.warnings, [""; 0]);
+
+    // no shift given: the numbers pass through, with a word about it
+    let grid = read_in("b.tif", "+proj=longlat +ellps=bessel +type=crs");
+    assert_lonlat(lonlat_deg(&grid, 1.0, 1.0), 8.0, 50.0, 1e-9);
+    let name = &grid.origin.crs_name;
+    assert_eq!(
+        grid.origin.warnings,
+        [format!(
+            "no transformation from the datum of '{name}' to WGS 84 is known here; it is taken for WGS 84, and posts \
+             may lie off by up to some hundred metres"
+        )]
+    );
+}
+
+#[test]
 fn posts_are_pixel_centres() {
     let dir = folder();
     let degrees = Shape {

@@ -333,6 +333,19 @@ fn progress_is_told_and_stop_is_heard() {
         ..ReadOptions::default()
     };
     let grid = read_grid(&path, &options).unwrap();
+    options.threads = Some(1);
+    assert_eq!(
+        grid.heights_m,
+        read_grid(
+            &path,
+            &ReadOptions {
+                progress: None,
+                ..options.clone()
+            }
+        )
+        .unwrap()
+        .heights_m
+    );
     assert!(grid.heights_m.iter().all(|&h| h == 7.0));
     let told = told.take();
     assert!(

@@ -6,6 +6,7 @@ use rayon::prelude::*;
 use super::unit;
 use super::window::Window;
 use crate::error::Fault;
+use crate::grid::HeightSummary;
 
 /// No ground is farther from the datum than this, metres (highest 8849 m, deepest about -10 935 m; common knowledge,
 /// no source).
@@ -99,8 +100,8 @@ impl Decoding {
         ((stored * self.scale + self.offset) * self.metres) as f32
     }
 
-    /// Stored values to heights, in place; true if one is absurd. Sound heights and voids only if not.
-    pub(super) fn finish(&self, values: &mut [f32]) -> bool {
+    /// Stored values to heights, in place, and their range.
+    pub(super) fn finish(&self, values: &mut [f32]) -> HeightSummary {
         match self.nodata {
             Nodata::None => self.finish_with(values, |_| false),
             Nodata::Above => self.finish_with(values, |v| v > HUGE as f32),
@@ -112,31 +113,27 @@ impl Decoding {
         }
     }
 
-    fn finish_with(&self, values: &mut [f32], is_void: impl Fn(f32) -> bool + Sync) -> bool {
+    fn finish_with(
+        &self,
+        values: &mut [f32],
+        is_void: impl Fn(f32) -> bool + Sync,
+    ) -> HeightSummary {
         let plain = self.is_plain();
         values
             .par_chunks_mut(1 << 16)
             .map(|chunk| {
-                // no branches, so that the loops vectorise
-                let mut absurd = false;
-                if plain {
-                    for v in chunk {
-                        *v = if is_void(*v) { f32::NAN } else { *v };
-                        absurd |= v.abs() > LIMIT_M;
-                    }
-                } else {
-                    for v in chunk {
-                        *v = if is_void(*v) {
-                            f32::NAN
-                        } else {
-                            self.height_m(f64::from(*v))
-                        };
-                        absurd |= v.abs() > LIMIT_M;
-                    }
+                // no branches inside, so that the loops vectorise
+                for v in &mut *chunk {
+                    let height_m = if plain {
+                        *v
+                    } else {
+                        self.height_m(f64::from(*v))
+                    };
+                    *v = if is_void(*v) { f32::NAN } else { height_m };
                 }
-                absurd
+                HeightSummary::of(chunk)
             })
-            .reduce(|| false, |a, b| a | b)
+            .reduce(HeightSummary::default, HeightSummary::and)
     }
 
     /// Refuses a window of voids only, and one with a mark of missing data that is not stated as such: a post of that
@@ -144,28 +141,18 @@ impl Decoding {
     pub(super) fn check_voids(
         &self,
         heights_m: &[f32],
+        summary: &HeightSummary,
         window: Window,
         ring: Option<usize>,
     ) -> Result<(), Fault> {
-        let (lowest, valid) = heights_m
-            .par_chunks(1 << 16)
-            .map(|chunk| {
-                let mut part = (f32::INFINITY, false);
-                for &h in chunk {
-                    part.0 = part.0.min(h);
-                    part.1 |= !h.is_nan();
-                }
-                part
-            })
-            .reduce(|| (f32::INFINITY, false), |a, b| (a.0.min(b.0), a.1 | b.1));
-        if !valid {
+        let Some(lowest_m) = summary.lowest_m else {
             let posts = heights_m.len();
             return Err(Fault::AllVoid { posts });
-        }
+        };
         for value in VOID_MARKS {
             let mark = self.height_m(value);
             // most DEMs go nowhere near
-            if mark > -CLIFF_M || lowest > mark {
+            if mark > -CLIFF_M || lowest_m > mark {
                 continue;
             }
             let found = (0..heights_m.len())

@@ -9,6 +9,7 @@ use super::decode::{Decoding, LIMIT_M};
 use super::gdal_text;
 use super::window::Window;
 use crate::error::Fault;
+use crate::grid::HeightSummary;
 
 /// Posts in one band of rows: large enough for GDAL to decode blocks side by side, small enough to stop soon.
 const BAND_POSTS: usize = 8 << 20;
@@ -19,7 +20,7 @@ pub(super) struct Watch<'a> {
     pub(super) stop: Option<&'a AtomicBool>,
 }
 
-/// Heights in metres of a window, row-major, NaN for voids.
+/// Heights in metres of a window, row-major, NaN for voids, and their range.
 ///
 /// `ring` as in [`super::window::Extent`].
 pub(super) fn read(
@@ -28,7 +29,8 @@ pub(super) fn read(
     ring: Option<usize>,
     decoding: &Decoding,
     watch: Watch<'_>,
-) -> Result<Vec<f32>, Fault> {
+) -> Result<(Vec<f32>, HeightSummary), Fault> {
+    let mut summary = HeightSummary::default();
     let mut heights = allocate(window.rows, window.cols)?;
     let pieces = pieces(window, ring);
     let (_, block_rows) = band.block_size();
@@ -40,27 +42,35 @@ pub(super) fn read(
         }
         let count = rows.len();
         let part = &mut heights[done * window.cols..(done + count) * window.cols];
-        let absurd = if decoding.wide {
-            scratch.read_wide(band, &rows, &pieces, window.cols, decoding, part)?
+        if decoding.wide {
+            scratch.read_wide(band, &rows, &pieces, window.cols, decoding, part)?;
         } else {
             scratch.read_f32(band, &rows, &pieces, window.cols, part)?;
-            decoding.finish(part)
-        };
+        }
+        // what a mask hides may be anything, so it goes before the heights are looked at
         if decoding.masked {
             scratch.apply_mask(band, &rows, &pieces, window.cols, part)?;
         }
-        // a masked post may hold anything
-        if absurd && let Some(at) = part.iter().position(|v| v.abs() > LIMIT_M) {
+        let found = if decoding.wide {
+            HeightSummary::of(part)
+        } else {
+            decoding.finish(part)
+        };
+        let absurd = |h: Option<f32>| h.is_some_and(|h| h.abs() > LIMIT_M);
+        if (absurd(found.lowest_m) || absurd(found.highest_m))
+            && let Some(at) = part.iter().position(|v| v.abs() > LIMIT_M)
+        {
             let (row, col) = (rows.start + at / window.cols, at % window.cols);
             let col = (window.first_col + col) % ring.unwrap_or(usize::MAX);
             return Err(absurd_height(band, row, col, part[at]));
         }
+        summary = summary.and(found);
         done += count;
         if let Some(progress) = watch.progress {
             progress(done as f64 / window.rows as f64);
         }
     }
-    Ok(heights)
+    Ok((heights, summary))
 }
 
 /// Zeroed memory that is not touched yet, or an error if there is not enough.
@@ -136,7 +146,7 @@ impl Scratch {
         Ok(())
     }
 
-    /// Values with more digits than f32 has, brought to metres before they are rounded. True if one is absurd.
+    /// Values with more digits than f32 has, brought to metres before they are rounded.
     fn read_wide(
         &mut self,
         band: &RasterBand<'_>,
@@ -145,8 +155,7 @@ impl Scratch {
         cols: usize,
         decoding: &Decoding,
         part: &mut [f32],
-    ) -> Result<bool, Fault> {
-        let mut absurd = false;
+    ) -> Result<(), Fault> {
         for &[to, from, len] in pieces {
             self.wide.resize(rows.len() * len, 0.0);
             fill(band, rows, from, len, &mut self.wide)?;
@@ -157,11 +166,10 @@ impl Scratch {
                     } else {
                         decoding.height_m(stored)
                     };
-                    absurd |= out.abs() > LIMIT_M;
                 }
             }
         }
-        Ok(absurd)
+        Ok(())
     }
 
     fn apply_mask(

@@ -158,8 +158,8 @@ fn read(path: &Path, options: &ReadOptions<'_>) -> Result<Grid, Failure> {
         progress: options.progress,
         stop: options.stop,
     };
-    let heights_m = heights::read(&band, window, ring, &decoding, watch)?;
-    decoding.check_voids(&heights_m, window, ring)?;
+    let (heights_m, summary) = heights::read(&band, window, ring, &decoding, watch)?;
+    decoding.check_voids(&heights_m, &summary, window, ring)?;
 
     let [x, y] = whole.xy(window.first_row as f64, window.first_col as f64);
     let grid = Grid {

@@ -6,7 +6,7 @@
 use gdal::spatial_ref::{AxisMappingStrategy, CoordTransform, CoordTransformOptions, SpatialRef};
 
 use super::ffi::silence_gdal;
-use super::gdal_text;
+use super::{gdal_text, wkt};
 use crate::error::{Fault, ReliefError};
 use crate::grid::{LonLatBox, Placement};
 
@@ -66,8 +66,9 @@ impl Placement {
             return Ok((xy.map(from_degrees).collect(), None));
         };
         silence_gdal();
-        let transform = to_wgs84(definition, false).map_err(|detail| {
-            let crs = definition.to_owned();
+        let transform = to_wgs84(definition, false).map_err(|said| {
+            let detail = format!("cannot be used: {said}");
+            let crs = wkt::name(definition);
             ReliefError::new(ACTION, "", Fault::UnusableCrs { crs, detail })
         })?;
         let (mut x, mut y): (Vec<f64>, Vec<f64>) = xy.map(|p| (p[0], p[1])).unzip();

@@ -42,9 +42,18 @@ pub(super) fn find<'w>(wkt: &'w str, keywords: &[&str]) -> Option<(&'w str, Vec<
     parts.iter().find_map(|part| find(part, keywords))
 }
 
+/// Name of a CRS given as WKT; the text itself if it is none.
+pub(super) fn name(crs: &str) -> String {
+    match split(crs) {
+        Some((_, parts)) => unquote(parts[0]),
+        None => crs.to_owned(),
+    }
+}
+
 /// A quoted name without its quotes.
 pub(super) fn unquote(text: &str) -> String {
-    text.trim_matches('"').replace("\"\"", "\"")
+    let inner = text.strip_prefix('"').and_then(|t| t.strip_suffix('"'));
+    inner.unwrap_or(text).replace("\"\"", "\"")
 }
 
 /// Unit of the vertical axis: its name and the metres in it.
@@ -89,5 +98,7 @@ mod tests {
         let plain = r#"GEOGCRS["x",DATUM["y"]]"#;
         assert_eq!(horizontal_and_vertical(plain), (plain, None));
         assert_eq!(split("GEOGCRS[\"x\"]]"), None);
+        assert_eq!(name(COMPOUND), "a, [odd] \"name\"");
+        assert_eq!(name("EPSG:32632"), "EPSG:32632");
     }
 }
