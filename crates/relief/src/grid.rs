@@ -28,8 +28,8 @@ pub struct Grid {
 /// Where the posts of a grid lie: an affine map to the grid's CRS, and the CRS.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Placement {
-    /// CRS x = a[0] + a[1] * col + a[2] * row, y = a[3] + a[4] * col + a[5] * row, with (row, col) = (0, 0) at the
-    /// first POST (pixel centre).
+    /// `x = a[0] + a[1] * col + a[2] * row`, `y = a[3] + a[4] * col + a[5] * row` in the CRS, with (row, col) = (0, 0)
+    /// at the first POST (pixel centre).
     pub affine: [f64; 6],
     /// The CRS as WKT or an authority code; None stands for WGS 84 longitude and latitude in degrees.
     pub crs: Option<String>,
