@@ -36,6 +36,9 @@ const PANEL: f64 = 1.0;
 /// Ratio of successive panels along a ray away from where the surface comes nearest to the station's level.
 const GRADING: f64 = 3.0;
 
+/// Closer to the station than this nothing needs to be resolved, m: at most 2 pi G rho r, 1e-4 uGal.
+const SMALLEST_FEATURE_M: f64 = 1e-6;
+
 /// What the near zone needs to know of the run.
 pub(crate) struct NearContext<'a> {
     pub station: &'a StationFrame,
@@ -197,7 +200,9 @@ fn grade(cuts: &mut Cuts, offset: f64, slope: f64, rho: f64) {
         -offset * g / (1.0 + g * g) / rho,
         (offset / (1.0 + g * g) / rho).abs(),
     );
-    if width < 1e-9 || width > 2.0 {
+    // a feature this near to the station weighs less than 1e-4 uGal
+    let smallest = SMALLEST_FEATURE_M / rho;
+    if width < smallest || width > 2.0 {
         return;
     }
     for direction in [-1.0, 1.0] {
@@ -207,7 +212,7 @@ fn grade(cuts: &mut Cuts, offset: f64, slope: f64, rho: f64) {
             if !(0.0..1.0).contains(&t) && direction * t > 0.0_f64.max(direction) {
                 break; // past the end of the ray on this side
             }
-            if t > 1e-9 && t < 0.999 {
+            if t > smallest && t < 0.999 {
                 cuts.push(t, KEEP_ZONE);
             }
             reach *= GRADING;
