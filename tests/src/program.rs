@@ -109,6 +109,20 @@ impl Folder {
         std::fs::write(self.path(name), text).expect("write a file of the test");
     }
 
+    /// Takes the right to read a file away; false if that does not stop this user.
+    ///
+    /// # Panics
+    /// When the permissions cannot be changed.
+    #[cfg(unix)]
+    #[must_use]
+    pub fn forbid(&self, name: &str) -> bool {
+        use std::os::unix::fs::PermissionsExt;
+        let path = self.path(name);
+        std::fs::set_permissions(&path, PermissionsExt::from_mode(0o000))
+            .expect("change permissions");
+        std::fs::File::open(&path).is_err()
+    }
+
     /// Reads a text file.
     ///
     /// # Panics
@@ -357,4 +371,15 @@ pub fn refused(folder: &Folder, words: &str) -> String {
     assert_eq!(folder.files(), before, "files were added or removed");
     assert_eq!(ran.stdout, "", "stdout");
     ran.stderr
+}
+
+/// The text with the rest of the line after `before` left out: what GDAL or PROJ says there differs by version.
+///
+/// # Panics
+/// When `before` does not stand in the text.
+#[must_use]
+pub fn without_foreign_words(text: &str, before: &str) -> String {
+    let at = text.find(before).expect(before) + before.len();
+    let rest = text[at..].find('\n').map_or("", |end| &text[at + end..]);
+    format!("{}[...]{rest}", &text[..at])
 }

@@ -156,3 +156,24 @@ fn output_suffix_unknown() {
     hint: end the name with .csv or .gpkg, or use - for CSV on standard output
     ");
 }
+
+#[test]
+fn survey_file_asks_for_the_sea() {
+    let folder = Folder::with_survey();
+    folder.write(
+        "survey.toml",
+        "stations = \"stations.csv\"\nbelow-zero = \"sea\"\n",
+    );
+    assert_snapshot!(refused(&folder, "effect survey.toml --dem dem.tif --out out.csv"), @r#"
+    error: survey file survey.toml, line 2: below-zero is "sea", it must be one of land
+
+    hint: use a DEM that covers land only, or whose sea surface is given as 0 m; if all ground below the datum is dry, say --below-zero land
+    "#);
+}
+
+#[test]
+fn survey_file_is_no_toml() {
+    let folder = Folder::with_survey();
+    folder.write("survey.toml", "stations: stations.csv\n");
+    assert_snapshot!(refused(&folder, "effect survey.toml --dem dem.tif --out out.csv"), @"error: survey file survey.toml, line 1: key with no value, expected `=`");
+}

@@ -6,6 +6,7 @@ use crate::messages::Messages;
 use crate::run_effect;
 use clap::{CommandFactory, Parser};
 use std::io::Write;
+use std::panic::{AssertUnwindSafe, catch_unwind};
 
 /// Runs the program.
 pub(crate) fn main() -> Exit {
@@ -23,11 +24,18 @@ pub(crate) fn main() -> Exit {
     };
     let quiet = matches!(&cli.command, Command::Effect(args) if args.quiet);
     let messages = Messages::new(quiet);
-    let ended = match cli.command {
+    let command = || match cli.command {
         Command::Effect(args) => run_effect::run(&args, messages),
         Command::Completions { shell } => completions(shell),
         Command::Manual { command } => manual(command.as_deref()),
     };
+    // A fault of the program says where it happened by itself (the panic's own message) and ends with a documented code.
+    let ended = catch_unwind(AssertUnwindSafe(command)).unwrap_or_else(|_| {
+        Err(Stop::failure(anyhow::anyhow!(
+            "a fault of the program, see above"
+        ))
+        .hint("please report it with the message above and the command that led to it"))
+    });
     match ended {
         Ok(exit) => exit,
         // Whoever read our output has had enough.

@@ -4,7 +4,7 @@ use crate::args::{BelowZeroArg, EffectArgs, GroundArg};
 use crate::exit::Stop;
 use hillpull_engine::{Ground, Settings};
 use hillpull_physics::constants;
-use hillpull_survey::{BelowZero, SurveyError, SurveyFile, TableOptions, ground_word};
+use hillpull_survey::{BelowZero, FileProblem, SurveyError, SurveyFile, TableOptions, ground_word};
 use std::path::PathBuf;
 
 /// Outer edges of Hayford-Bowie zones C, H and L.
@@ -43,7 +43,7 @@ impl RunConfig {
             return Err(no_sea());
         }
         let file = match &args.survey {
-            Some(path) => SurveyFile::read(path).map_err(from_survey)?,
+            Some(path) => SurveyFile::read(path).map_err(from_survey_file)?,
             None => SurveyFile::default(),
         };
         let path = |flag: &Option<PathBuf>, key: Option<PathBuf>| flag.clone().or(key);
@@ -150,6 +150,28 @@ pub(crate) fn from_survey(error: SurveyError) -> Stop {
         hint,
         ..Stop::bad_input(error)
     }
+}
+
+/// The same for the survey file, where a sea is asked for under another name than on the command line.
+fn from_survey_file(error: SurveyError) -> Stop {
+    if let SurveyError::SurveyFile {
+        problem:
+            FileProblem::WrongWord {
+                key: "below-zero",
+                found,
+                ..
+            },
+        ..
+    } = &error
+        && found == "sea"
+    {
+        let hint = no_sea().hint;
+        return Stop {
+            hint,
+            ..Stop::bad_input(error)
+        };
+    }
+    from_survey(error)
 }
 
 fn no_sea() -> Stop {
