@@ -3,3 +3,5 @@
 pub mod published;
 
 pub mod program;
+
+pub mod relief_fixtures;
