@@ -232,6 +232,63 @@ fn the_finer_dem_counts_where_it_covers() {
 }
 
 #[test]
+fn tiles_in_a_vrt_are_one_dem() {
+    let folder = Folder::with_survey();
+    done(&folder, HILL_RUN);
+    let whole = folder.read("out.csv");
+    // The hill cut between rows 40 and 41, amid the stations.
+    let hill = Dem::hill();
+    let (north, south) = hill.heights_m.split_at(81 * 41);
+    folder.dem(
+        "north.tif",
+        &Dem {
+            size: (81, 41),
+            heights_m: north.to_vec(),
+            ..hill.clone()
+        },
+    );
+    let corner = (hill.corner.0, hill.corner.1 - 41.0 * hill.step);
+    folder.dem(
+        "south.tif",
+        &Dem {
+            size: (81, 40),
+            heights_m: south.to_vec(),
+            corner,
+            ..hill.clone()
+        },
+    );
+    let tile = |name: &str, rows: usize, from: usize| {
+        format!(
+            r#"<SimpleSource><SourceFilename relativeToVRT="1">{name}</SourceFilename><SourceBand>1</SourceBand>
+            <SrcRect xOff="0" yOff="0" xSize="81" ySize="{rows}"/><DstRect xOff="0" yOff="{from}" xSize="81" ySize="{rows}"/></SimpleSource>"#
+        )
+    };
+    folder.write(
+        "both.vrt",
+        &format!(
+            r#"<VRTDataset rasterXSize="81" rasterYSize="81"><SRS>EPSG:32632</SRS>
+            <GeoTransform>{}, {}, 0, {}, 0, -{}</GeoTransform>
+            <VRTRasterBand dataType="Float32" band="1"><NoDataValue>-9999</NoDataValue>{}{}</VRTRasterBand></VRTDataset>"#,
+            hill.corner.0,
+            hill.step,
+            hill.corner.1,
+            hill.step,
+            tile("north.tif", 41, 0),
+            tile("south.tif", 40, 41)
+        ),
+    );
+    done(&folder, &HILL_RUN.replace("dem.tif", "both.vrt"));
+    assert_eq!(folder.read("out.csv"), whole);
+    let provenance = folder.read("out.csv.provenance.toml");
+    for name in ["both.vrt", "north.tif", "south.tif", "stations.csv"] {
+        assert!(
+            provenance.contains(name),
+            "{name} is missing in\n{provenance}"
+        );
+    }
+}
+
+#[test]
 fn geographic_stations_and_named_columns() {
     let folder = Folder::with_survey();
     // The summit station in degrees (PROJ, EPSG:32632 to EPSG:4326), under names nobody would guess.

@@ -31,10 +31,10 @@ pub(crate) fn main() -> Exit {
     };
     // A fault of the program says where it happened by itself (the panic's own message) and ends with a documented code.
     let ended = catch_unwind(AssertUnwindSafe(command)).unwrap_or_else(|_| {
-        Err(Stop::failure(anyhow::anyhow!(
-            "a fault of the program, see above"
-        ))
-        .hint("please report it with the message above and the command that led to it"))
+        Err(
+            Stop::failure(anyhow::anyhow!("a fault of the program, see above"))
+                .hint("please report it with the message above and the command that led to it"),
+        )
     });
     match ended {
         Ok(exit) => exit,

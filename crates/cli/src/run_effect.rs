@@ -12,11 +12,11 @@ use crate::messages::Messages;
 use crate::progress::Progress;
 use crate::summary;
 use hillpull_engine::Ground;
-use hillpull_relief::Relief;
+use hillpull_relief::{Grid, Relief};
 use hillpull_survey::{
     Outcome, OutputTarget, Provenance, StationTable, join, read_stations, write_effects,
 };
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 use std::sync::atomic::{AtomicBool, Ordering};
 use std::time::Instant;
 
@@ -52,7 +52,7 @@ pub(crate) fn run(args: &EffectArgs, messages: Messages) -> Result<Exit, Stop> {
     let stations = table.engine_stations(config.ground);
     let grids =
         pool.install(|| load::grids(&config, &stations.stations, progress, messages, stop))?;
-    let provenance = provenance(&config, &target)?;
+    let provenance = provenance(&config, &target, &grids, progress, stop)?;
     let relief = {
         let bar = progress.working("building the relief");
         let relief = pool.install(|| Relief::build(grids));
@@ -123,24 +123,50 @@ pub(crate) fn go_on(stop: &AtomicBool) -> Result<(), Stop> {
 }
 
 /// Options and checksums for the output. Standard output has no room for them, so nothing is read for it.
-fn provenance(config: &RunConfig, target: &OutputTarget) -> Result<Provenance, Stop> {
+fn provenance(
+    config: &RunConfig,
+    target: &OutputTarget,
+    grids: &[Grid],
+    progress: Progress,
+    stop: &AtomicBool,
+) -> Result<Provenance, Stop> {
     let mut provenance =
         Provenance::new(env!("CARGO_PKG_VERSION"), &config.settings, config.ground);
     for (name, value) in config.options() {
         provenance.option(name, value);
     }
-    if *target != OutputTarget::Stdout {
-        if let Some(path) = &config.survey {
-            provenance.input("survey", path).map_err(from_survey)?;
-        }
-        provenance
-            .input("stations", &config.stations)
-            .map_err(from_survey)?;
-        for path in &config.dems {
-            provenance.input("dem", path).map_err(from_survey)?;
+    if *target == OutputTarget::Stdout {
+        return Ok(provenance);
+    }
+    let mut files: Vec<(&str, &Path)> = config
+        .survey
+        .iter()
+        .map(|path| ("survey", path.as_path()))
+        .collect();
+    files.push(("stations", &config.stations));
+    for path in grids.iter().flat_map(dem_files) {
+        if !files.contains(&("dem", path)) {
+            files.push(("dem", path));
         }
     }
+    let bar = progress.working("checksums of the inputs");
+    for (role, path) in files {
+        go_on(stop)?;
+        provenance.input(role, path).map_err(from_survey)?;
+    }
+    bar.finish_and_clear();
     Ok(provenance)
+}
+
+/// The DEM as named, then what stands behind it, such as the tiles of a VRT.
+fn dem_files(grid: &Grid) -> impl Iterator<Item = &Path> {
+    let named = &grid.origin.path;
+    let behind = grid
+        .origin
+        .files
+        .iter()
+        .filter(move |file| *file != named && file.exists());
+    std::iter::once(named).chain(behind).map(PathBuf::as_path)
 }
 
 /// A misfit that most stations share is no matter of the DEM's resolution.
