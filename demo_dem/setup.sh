@@ -47,7 +47,7 @@ if ! system_ready && command -v apt-get >/dev/null 2>&1; then
         say "Installing a C compiler, pkg-config, libclang, GDAL and PROJ with apt-get (a few minutes) ..."
         apt_log=$(mktemp)
         # shellcheck disable=SC2086 # as_root is a command with its option, or nothing
-        if ! { $as_root env DEBIAN_FRONTEND=noninteractive apt-get -q update &&
+        if ! { $as_root env DEBIAN_FRONTEND=noninteractive apt-get -q update;
             $as_root env DEBIAN_FRONTEND=noninteractive apt-get -q install -y --no-install-recommends \
                 build-essential pkg-config libclang-dev libgdal-dev libproj-dev; } >"$apt_log" 2>&1 </dev/null; then
             tail -n 20 "$apt_log" >&2
