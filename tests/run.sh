@@ -12,6 +12,10 @@ started=$(date +%s)
 . demo_dem/setup.sh
 say "set-up: $(($(date +%s) - started)) s"
 
+scratch=$(mktemp -d)
+trap 'rm -rf "$scratch"' EXIT
+trap 'exit 130' INT TERM
+
 step() {
     name=$1
     shift
@@ -46,8 +50,8 @@ target="${CARGO_TARGET_DIR:-$PWD/target}"
 # a folder of its own, with an empty environment, on stations in a projected CRS, which no program without the database
 # can place. A PROJ of the build's own would carry the build folder's path to the database in the program.
 installed() {
-    folder=$(mktemp -d)
-    trap 'rm -rf "$folder"' EXIT
+    folder="$scratch/installed"
+    mkdir "$folder"
     cargo install --locked --quiet --debug --path crates/cli --root "$folder/root" --target-dir "$target"
     if grep -aq "$target[[:graph:]]*/share/proj" "$folder/root/bin/hillpull"; then
         say "the installed program looks for PROJ's database in the build folder"
@@ -70,9 +74,31 @@ installed() {
     [ "$(wc -l <"$folder/effects.csv")" -eq 3 ]
 }
 
+# The demo survey with the programs that the tests were run on; the README shows some of its results.
+demo() {
+    folder="$scratch/demo"
+    mkdir -p "$folder/out"
+    cp demo_dem/survey.toml demo_dem/stations.csv "$folder"
+    "$target/debug/hillpull-demo" "$folder/dem"
+    "$target/debug/hillpull" effect "$folder/survey.toml"
+    rows=0
+    while IFS='| ' read -r _ id height effect _; do
+        rows=$((rows + 1))
+        if ! grep -q "^$id,.*,$height,.*,$effect," "$folder/out/effects.csv"; then
+            say "README.md shows $effect mGal at $id; the demo gives:"
+            grep "^$id," "$folder/out/effects.csv" >&2
+            return 1
+        fi
+    done <<END
+$(grep '^| [UPLKS][0-9][0-9] |' README.md)
+END
+    [ "$rows" -ge 3 ]
+}
+
 step "format" cargo fmt --all --check
 step "lints" cargo clippy --locked --quiet --workspace --all-targets -- -D warnings
 step "tests" cargo test --locked --workspace
+step "demo survey" demo
 step "documentation" document
 step "installed program" installed
 
