@@ -30,17 +30,46 @@ pub fn effects(
     done: &(dyn Fn(usize) + Sync),
     stop: &AtomicBool,
 ) -> Vec<Result<StationEffect, StationProblem>> {
-    stations
-        .par_iter()
-        .map(|station| {
+    // neighbours one after the other, so that they find their nodes in the cache
+    let order = along_a_curve(stations);
+    let computed: Vec<(usize, Result<StationEffect, StationProblem>)> = order
+        .into_par_iter()
+        .map(|k| {
             if stop.load(Ordering::Relaxed) {
-                return Err(StationProblem::Interrupted);
+                return (k, Err(StationProblem::Interrupted));
             }
-            let result = effect(relief, station, settings);
+            let result = effect(relief, &stations[k], settings);
             done(1);
-            result
+            (k, result)
         })
-        .collect()
+        .collect();
+    let mut results = vec![Err(StationProblem::Interrupted); stations.len()];
+    for (k, result) in computed {
+        results[k] = result;
+    }
+    results
+}
+
+/// Indices of the stations along a space-filling (Morton) curve.
+fn along_a_curve(stations: &[Station]) -> Vec<usize> {
+    let range = |value: fn(&Station) -> f64| {
+        let (low, high) = stations
+            .iter()
+            .map(value)
+            .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), v| {
+                (low.min(v), high.max(v))
+            });
+        (low, 65_535.0 / (high - low).max(1e-9))
+    };
+    let ((lon, lon_scale), (lat, lat_scale)) = (range(|s| s.lon_deg), range(|s| s.lat_deg));
+    let spread =
+        |v: f64| (0..16).fold(0_u32, |sum, bit| sum | ((v as u32 >> bit & 1) << (2 * bit)));
+    let key = |s: &Station| {
+        spread((s.lon_deg - lon) * lon_scale) | spread((s.lat_deg - lat) * lat_scale) << 1
+    };
+    let mut order: Vec<usize> = (0..stations.len()).collect();
+    order.sort_by_cached_key(|&k| (key(&stations[k]), k));
+    order
 }
 
 /// The terrain effect at one station.
@@ -81,18 +110,17 @@ pub fn effect(
         evaluations += walk.sums.evaluations;
         let bound = bound(&walk.sums);
         if bound <= tolerance {
-            let cap = cap_mgal(
-                frame.height_m,
-                settings.outer_radius_m,
-                settings.density_kg_m3,
-                settings.big_g,
-            );
-            return Ok(result(&walk.sums, &edges, frame.stretch, unit, bound, cap, |out| {
-                out.dem_height_m = surface.height_m;
-                out.height_misfit_m = misfit_m;
-                out.layer = surface.layer;
-                out.evaluations = evaluations;
-            }));
+            let mut out = result(&walk.sums, unit);
+            let gap_m = relief.nearest_gap_m(frame.foot_m);
+            fill_covered(&mut out, &walk.sums.area, &edges, frame.stretch, gap_m);
+            let (outer_m, density) = (settings.outer_radius_m, settings.density_kg_m3);
+            out.topography_mgal += cap_mgal(frame.height_m, outer_m, density, settings.big_g);
+            out.numeric_bound_mgal = bound * unit.abs();
+            out.dem_height_m = surface.height_m;
+            out.height_misfit_m = misfit_m;
+            out.layer = surface.layer;
+            out.evaluations = evaluations;
+            return Ok(out);
         }
         aim *= 0.6 * tolerance / bound;
         if aim < 1e-3 * tolerance {
@@ -111,37 +139,42 @@ fn bound(sums: &Sums) -> f64 {
     sums.smooth + ROUGH_FACTOR * sums.rough2.sqrt() + FLOOR * size
 }
 
-fn result(
-    sums: &Sums,
-    edges: &Edges,
-    stretch: f64,
-    unit: f64,
-    bound: f64,
-    cap_mgal: f64,
-    fill: impl FnOnce(&mut StationEffect),
-) -> StationEffect {
+/// The effects by zone and in total; the topography still lacks its cap.
+fn result(sums: &Sums, unit: f64) -> StationEffect {
     let zone_effect_mgal: Vec<f64> = sums.value.iter().map(|v| v * unit).collect();
     let total: f64 = zone_effect_mgal.iter().sum();
-    let mut inner = 0.0;
-    let mut zone_covered = Vec::with_capacity(edges.outer.len());
-    for (area, edge) in sums.area.iter().zip(&edges.outer) {
-        // the area within chord c on a sphere is pi c^2
-        let whole = PI * (edge * stretch) * (edge * stretch);
-        zone_covered.push((area / (whole - inner)).clamp(0.0, 1.0));
-        inner = whole;
-    }
-    let mut out = StationEffect {
+    StationEffect {
         terrain_effect_mgal: total,
         zone_effect_mgal,
-        topography_mgal: cap_mgal + total,
-        numeric_bound_mgal: bound * unit.abs(),
+        topography_mgal: total,
+        numeric_bound_mgal: 0.0,
         dem_height_m: 0.0,
         height_misfit_m: 0.0,
-        covered: (sums.area.iter().sum::<f64>() / inner).clamp(0.0, 1.0),
-        zone_covered,
+        covered: 1.0,
+        zone_covered: Vec::new(),
         layer: 0,
         evaluations: 0,
+    }
+}
+
+/// Shares covered: exactly 1 where the nearest gap lies beyond, else the area met over the area of the ring.
+fn fill_covered(out: &mut StationEffect, areas: &[f64], edges: &Edges, stretch: f64, gap_m: f64) {
+    let (mut inner, mut met) = (0.0, 0.0);
+    for (area, edge) in areas.iter().zip(&edges.outer) {
+        // the area within chord c on a sphere is pi c^2
+        let whole = PI * (edge * stretch) * (edge * stretch);
+        let share = if *edge < gap_m {
+            1.0
+        } else {
+            (area / (whole - inner)).clamp(0.0, 1.0)
+        };
+        out.zone_covered.push(share);
+        met += share * (whole - inner);
+        inner = whole;
+    }
+    out.covered = if out.zone_covered.iter().all(|&share| share == 1.0) {
+        1.0
+    } else {
+        met / inner
     };
-    fill(&mut out);
-    out
 }

@@ -25,7 +25,10 @@ impl StationFrame {
     pub(crate) fn new(lon_deg: f64, lat_deg: f64, height_m: f64) -> Self {
         let (lon, lat) = (lon_deg.to_radians(), lat_deg.to_radians());
         let ellipsoid = Ellipsoid::WGS84;
-        let (m, n) = (ellipsoid.meridian_radius_m(lat), ellipsoid.prime_vertical_radius_m(lat));
+        let (m, n) = (
+            ellipsoid.meridian_radius_m(lat),
+            ellipsoid.prime_vertical_radius_m(lat),
+        );
         let inv_radius = 1.0 / (m * n).sqrt();
         Self {
             foot_m: ellipsoid.foot_ecef_m(lon, lat),
@@ -80,6 +83,8 @@ pub(crate) struct TileFrame {
     pub area_slope: [f64; 2],
     /// Tangents by x and by y at the middle, m per cell.
     pub tangents: [Vec3; 2],
+    /// Products of the tangents: xx, xy, yy, m2 per cell^2.
+    pub metric: [f64; 3],
     /// b / c0.
     b_ratio: f64,
     /// (1 + c1) / d2.
@@ -137,6 +142,7 @@ impl TileFrame {
             cell_area: c.map(|v| v * fm * fp),
             area_slope: [c[1] / c[0], c[2] / c[0]],
             tangents,
+            metric: [dot(tx, tx), dot(tx, ty), dot(ty, ty)],
             b_ratio,
             c1_rate,
             k1: im / fm + ip / fp,

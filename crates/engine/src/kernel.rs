@@ -8,6 +8,8 @@
 //!   curvature: mean of F over the node = F + F_s tr M + 2 F_ss D'MD + 2 F_sz D'c + F_zz var / 2, with M the second
 //!   moments of position and c the covariance of height with position.
 
+use multiversion::multiversion;
+
 /// Nodes evaluated at a time.
 pub(crate) const LANES: usize = 8;
 
@@ -30,16 +32,48 @@ const ROUGH_REMAINDER: f64 = 0.6;
 /// column's normal and squared length of D; k1 = 1/M' + 1/N', whose half squared stands for 1/M'N'.
 #[inline(always)]
 pub(crate) fn column(d2: f64, c0: f64, b: f64, c1: f64, k1: f64, z: f64) -> f64 {
-    let r = d2.sqrt();
-    let l = (d2 + 2.0 * b * z + z * z).sqrt();
-    column_of(d2, r, l, c0, b, c1, k1, z)
+    column_with(d2, c0, b, c1, k1, z, atanh_less_t)
 }
 
 #[inline(always)]
-fn column_of(d2: f64, r: f64, l: f64, c0: f64, b: f64, c1: f64, k1: f64, z: f64) -> f64 {
-    let inv_l = 1.0 / l;
-    let inv_r = 1.0 / r;
-    let inv_sum = 1.0 / (l + r);
+fn column_with(
+    d2: f64,
+    c0: f64,
+    b: f64,
+    c1: f64,
+    k1: f64,
+    z: f64,
+    atanh_less_t: impl Fn(f64, f64) -> f64,
+) -> f64 {
+    let r = d2.sqrt();
+    let l = (d2 + 2.0 * b * z + z * z).sqrt();
+    column_of(
+        d2,
+        (r, l),
+        c0,
+        b,
+        c1,
+        k1,
+        z,
+        (1.0 / r, 1.0 / l, 1.0 / (l + r)),
+        atanh_less_t,
+    )
+    .0
+}
+
+/// The column, and (z + b) / l. Takes r, l and the inverses of r, l and l + r.
+#[inline(always)]
+fn column_of(
+    d2: f64,
+    (r, l): (f64, f64),
+    c0: f64,
+    b: f64,
+    c1: f64,
+    k1: f64,
+    z: f64,
+    (inv_r, inv_l, inv_sum): (f64, f64, f64),
+    atanh_less_t: impl Fn(f64, f64) -> f64,
+) -> (f64, f64) {
     let rise = z * (2.0 * b + z) * inv_sum; // l - r
     let g = (r - b * (2.0 * b + z) * inv_sum) * inv_l / (d2 - b * b);
     // integrals of dz / l^3, z dz / l^3 and z^3 dz / l^3
@@ -50,17 +84,32 @@ fn column_of(d2: f64, r: f64, l: f64, c0: f64, b: f64, c1: f64, k1: f64, z: f64)
     // integral of z^2 dz / l^3 with z = (z + b) - b, up to terms in b^2
     let t = (z + b) * inv_l;
     let lean = b * inv_r;
-    let atanh_less_t = if t.abs() < 0.5 {
-        small_atanh_less_t(t)
+    let exp_atanh = ((z + b).abs() + l) * inv_r;
+    let j2 = atanh_less_t(t, exp_atanh)
+        - lean * lean * lean * (1.0 / 3.0 + 0.2 * lean * lean)
+        - 2.0 * b * rise * inv_r * inv_l
+        + b * b * j0;
+    (
+        c0 * j0 + (c1 + c0 * k1) * j1 + c1 * k1 * (j2 + 0.25 * k1 * j3),
+        t,
+    )
+}
+
+/// Below this the series of atanh serves.
+const STEEP: f64 = 0.5;
+
+/// atanh(t) - t, with e^atanh|t| given: t alone doesn't tell how near it is to 1.
+#[inline(always)]
+fn atanh_less_t(t: f64, exp_atanh: f64) -> f64 {
+    if t.abs() < STEEP {
+        small_atanh_less_t(t, exp_atanh)
     } else {
-        ((((z + b).abs() + l) * inv_r).ln() - t.abs()).copysign(t)
-    };
-    let j2 = atanh_less_t - lean * lean * lean * (1.0 / 3.0 + 0.2 * lean * lean) - 2.0 * b * rise * inv_r * inv_l + b * b * j0;
-    c0 * j0 + (c1 + c0 * k1) * j1 + c1 * k1 * (j2 + 0.25 * k1 * j3)
+        (exp_atanh.ln() - t.abs()).copysign(t)
+    }
 }
 
 #[inline(always)]
-fn small_atanh_less_t(t: f64) -> f64 {
+fn small_atanh_less_t(t: f64, _exp_atanh: f64) -> f64 {
     let q = t * t;
     t * q
         * (1.0 / 3.0
@@ -109,63 +158,106 @@ pub(crate) struct Lanes {
     pub f_z: Lane,
     /// Sum of the second-order terms' sizes, 1/m.
     pub second: Lane,
-    /// trace / d2.
-    pub spread: Lane,
+    /// Share of what a node may err by; above 1 the node must be opened.
+    pub share: Lane,
+    /// (z + b) / l.
+    pub tangent: Lane,
 }
 
 impl Lanes {
-    /// Evaluates all lanes.
-    pub(crate) fn evaluate(&mut self) {
+    /// Evaluates all lanes. `inv_smooth` and `inv_rough2` are the inverses of the remainders a node may have.
+    pub(crate) fn evaluate(&mut self, inv_smooth: f64, inv_rough2: f64) {
+        evaluate_lanes(self, inv_smooth, inv_rough2);
         for i in 0..LANES {
-            self.evaluate_lane(i);
+            // the series of atanh is for gentle columns; steep ones take the logarithm
+            if self.tangent[i].abs() >= STEEP {
+                self.mend_steep(i);
+            }
         }
     }
 
-    #[inline(always)]
-    fn evaluate_lane(&mut self, i: usize) {
-        let (d2, z, var, trace) = (self.d2[i], self.z[i], self.var[i], self.trace[i]);
-        let (c0, c1, k1, b) = (self.c0[i], self.c1[i], self.k1[i], self.b[i]);
-        let r = d2.sqrt();
-        let l = (d2 + 2.0 * b * z + z * z).sqrt();
-        let f = column_of(d2, r, l, c0, b, c1, k1, z);
-
-        let (ir, il) = (1.0 / r, 1.0 / l);
-        let (ir2, il2) = (ir * ir, il * il);
-        let il3 = il * il2;
-        let il5 = il3 * il2;
-        // 1/r - 1/l without cancellation, and from it 1/r^3 - 1/l^3 and 1/r^5 - 1/l^5
-        let d1 = z * z / (l + r) * ir * il;
-        let d3 = d1 * (ir2 + ir * il + il2);
-        let d5 = d3 * ir2 + il3 * d1 * (ir + il);
-        let zc = z * c0 * ir2;
-        let f_s = 0.5 * d3 - 0.5 * zc * il3;
-        let f_ss = -0.75 * d5 + 0.75 * zc * il5;
-        let f_sz = 1.5 * z * il5 + 0.5 * c0 * ir2 * il3 * (3.0 * z * z * il2 - 1.0);
-        let f_zz = -il3 + 3.0 * z * z * il5 - 3.0 * z * c0 * il5;
-        let f_z = -z * il3 + c0 * il3;
-
-        // what the flat kernel leaves out of each, to first order in z / R (columns widen upward, l lengthens)
-        let wide = k1 * z;
-        let t_zz = 0.5 * f_zz * var * (1.0 + 1.25 * wide);
-        let t_s = f_s * trace * (1.0 + 0.8 * wide);
-        let t_ss = 2.0 * f_ss * self.dmd[i] * (1.0 + 1.05 * wide);
-        let t_sz = 2.0 * f_sz * self.dc[i] * (1.0 + 1.5 * wide);
-        let second = t_zz.abs() + t_s.abs() + t_ss.abs() + t_sz.abs();
-        let area = self.area[i];
-        let spread = trace * ir2;
-        let rough = self.rough[i];
-        self.value[i] = area * (f + ((t_zz + t_sz) + (t_s + t_ss)));
-        self.smooth_error[i] = area * SMOOTH_REMAINDER * second * (spread + var * il2);
-        // E[h'h'x], E[h'xx], E[h'h'h'] of what is not plane, times third derivatives of about 1/l^4
-        let curved = c0 * ir2 * l * trace;
-        let third = var * trace + (z * z * il2) * (trace * trace + var * var) + curved * curved;
-        let unit = area * ROUGH_REMAINDER * il2 * il2;
-        self.rough_error2[i] = unit * unit * rough * third;
-        self.f_s[i] = f_s;
-        self.f_z[i] = f_z;
-        self.second[i] = second;
-        self.spread[i] = spread;
+    #[cold]
+    fn mend_steep(&mut self, i: usize) {
+        let (d2, c0, b, c1, k1, z) = (
+            self.d2[i], self.c0[i], self.b[i], self.c1[i], self.k1[i], self.z[i],
+        );
+        let bare = column(d2, c0, b, c1, k1, z);
+        let series = column_with(d2, c0, b, c1, k1, z, small_atanh_less_t);
+        self.value[i] += self.area[i] * (bare - series);
     }
+}
+
+/// One loop for all lanes, without branches, so that it compiles to vector instructions at every level of the CPU;
+/// no fused multiply-add, so that all levels give the same bits.
+#[multiversion(targets = "simd")]
+fn evaluate_lanes(lanes: &mut Lanes, inv_smooth: f64, inv_rough2: f64) {
+    for i in 0..LANES {
+        evaluate_lane(lanes, i, inv_smooth, inv_rough2);
+    }
+}
+
+#[inline(always)]
+fn evaluate_lane(lanes: &mut Lanes, i: usize, inv_smooth: f64, inv_rough2: f64) {
+    let (d2, z, var, trace) = (lanes.d2[i], lanes.z[i], lanes.var[i], lanes.trace[i]);
+    let (c0, c1, k1, b) = (lanes.c0[i], lanes.c1[i], lanes.k1[i], lanes.b[i]);
+    let r = d2.sqrt();
+    let l = (d2 + 2.0 * b * z + z * z).sqrt();
+    let (ir, il, inv_sum) = (1.0 / r, 1.0 / l, 1.0 / (l + r));
+    let (f, tangent) = column_of(
+        d2,
+        (r, l),
+        c0,
+        b,
+        c1,
+        k1,
+        z,
+        (ir, il, inv_sum),
+        small_atanh_less_t,
+    );
+
+    let (ir2, il2) = (ir * ir, il * il);
+    let il3 = il * il2;
+    let il5 = il3 * il2;
+    // 1/r - 1/l without cancellation, and from it 1/r^3 - 1/l^3 and 1/r^5 - 1/l^5
+    let d1 = z * z * inv_sum * ir * il;
+    let d3 = d1 * (ir2 + ir * il + il2);
+    let d5 = d3 * ir2 + il3 * d1 * (ir + il);
+    let zc = z * c0 * ir2;
+    let f_s = 0.5 * d3 - 0.5 * zc * il3;
+    let f_ss = -0.75 * d5 + 0.75 * zc * il5;
+    let f_sz = 1.5 * z * il5 + 0.5 * c0 * ir2 * il3 * (3.0 * z * z * il2 - 1.0);
+    let f_zz = -il3 + 3.0 * z * z * il5 - 3.0 * z * c0 * il5;
+    let f_z = -z * il3 + c0 * il3;
+
+    // what the flat kernel leaves out of each, to first order in z / R (columns widen upward, l lengthens)
+    let wide = k1 * z;
+    let t_zz = 0.5 * f_zz * var * (1.0 + 1.25 * wide);
+    let t_s = f_s * trace * (1.0 + 0.8 * wide);
+    let t_ss = 2.0 * f_ss * lanes.dmd[i] * (1.0 + 1.05 * wide);
+    let t_sz = 2.0 * f_sz * lanes.dc[i] * (1.0 + 1.5 * wide);
+    let second = t_zz.abs() + t_s.abs() + t_ss.abs() + t_sz.abs();
+    let area = lanes.area[i];
+    let spread = trace * ir2;
+    let rough = lanes.rough[i];
+    let smooth_error = area * SMOOTH_REMAINDER * second * (spread + var * il2);
+    // E[h'h'x], E[h'xx], E[h'h'h'] of what is not plane, times third derivatives of about 1/l^4
+    let curved = c0 * ir2 * l * trace;
+    let third = var * trace + (z * z * il2) * (trace * trace + var * var) + curved * curved;
+    let unit = area * ROUGH_REMAINDER * il2 * il2;
+    let rough_error2 = unit * unit * rough * third;
+    let share = smooth_error * inv_smooth + rough_error2 * inv_rough2;
+    lanes.value[i] = area * (f + ((t_zz + t_sz) + (t_s + t_ss)));
+    lanes.smooth_error[i] = smooth_error;
+    lanes.rough_error2[i] = rough_error2;
+    lanes.share[i] = if spread < LARGEST_SPREAD {
+        share
+    } else {
+        f64::INFINITY
+    };
+    lanes.f_s[i] = f_s;
+    lanes.f_z[i] = f_z;
+    lanes.second[i] = second;
+    lanes.tangent[i] = tangent;
 }
 
 #[cfg(test)]
@@ -180,7 +272,9 @@ mod tests {
         let radius = 6.37e6;
         let (mut worst, mut worst_low) = (0.0_f64, 0.0_f64);
         for r in [1.0, 30.0, 300.0, 3e3, 1e4, 3e4, 1e5, 1.667e5] {
-            for z in [-9000.0, -3000.0, -300.0, -10.0, 0.1, 50.0, 1000.0, 8000.0_f64] {
+            for z in [
+                -9000.0, -3000.0, -300.0, -10.0, 0.1, 50.0, 1000.0, 8000.0_f64,
+            ] {
                 let c0 = r * r / (2.0 * radius);
                 let c1 = -1.0 + r * r / (2.0 * radius * radius);
                 let full = column_per_area(c0, c1, c0, r * r, 1.0 / radius, 1.0 / radius, z);
@@ -223,7 +317,7 @@ mod tests {
         lanes.dc = [x0 * slope * q; LANES];
         lanes.z = [slope * x0; LANES];
         lanes.var = [slope * slope * q; LANES];
-        lanes.evaluate();
+        lanes.evaluate(1.0, 1.0);
         // second order: remainder of fourth order in 100 m / 1000 m
         assert_relative_eq!(lanes.value[3], sum, max_relative = 3e-6);
         assert!((lanes.value[3] - sum).abs() <= lanes.smooth_error[3]);

@@ -7,6 +7,7 @@ mod brute;
 mod effect;
 mod frame;
 mod kernel;
+mod load;
 mod near;
 mod types;
 mod walk;

@@ -1,13 +1,14 @@
 //! The walk: from the top of each layer's pyramid down to the station, opening what can't yet be taken whole.
 
 use crate::bend::Bend;
-use crate::frame::{Sight, StationFrame, TileFrame, node_sight};
-use crate::kernel::{LANES, LARGEST_SPREAD, Lanes};
+use crate::frame::{StationFrame, TileFrame, node_sight};
+use crate::kernel::{LANES, Lanes};
+use crate::load::{PieceLanes, load_upper};
 use crate::near::{NearContext, NearSums, add_polygon};
 use crate::zones::{Edges, Whereabouts, share_below};
 use hillpull_relief::clip::{edges, square};
 use hillpull_relief::layer::{CellState, Layer, morton_decode};
-use hillpull_relief::moments::{CHILD_SIGNS, Moments};
+use hillpull_relief::moments::CHILD_SIGNS;
 
 /// Nodes that a walk is expected to take: sets the share of the tolerance of each.
 const EXPECTED_NODES: f64 = 2000.0;
@@ -39,33 +40,52 @@ pub(crate) struct Sums {
     pub evaluations: u64,
 }
 
-/// A piece of a tile waiting to be evaluated.
+/// A square of a tile: a node, or below level 0 a part of a cell.
 #[derive(Clone, Copy, Debug)]
-struct Piece {
-    /// Level of a node; below 0 a part of a cell.
+struct Square {
     level: i32,
     morton: u32,
-    /// Middle of the square, tile coordinates.
+    /// Middle, tile coordinates.
     x: f64,
     y: f64,
-    /// Width of the square, cells.
+    /// Width, cells.
     size: f64,
-    moments: Moments,
 }
 
-/// What a lane still needs after evaluation, besides the kernel's results.
+impl Square {
+    /// The child `k`, in child order.
+    #[inline]
+    fn child(&self, k: usize) -> Self {
+        let half = 0.5 * self.size;
+        let (sx, sy) = CHILD_SIGNS[k];
+        Self {
+            level: self.level - 1,
+            morton: self.morton.wrapping_mul(4) + k as u32,
+            x: self.x + 0.5 * half * sx,
+            y: self.y + 0.5 * half * sy,
+            size: half,
+        }
+    }
+}
+
+/// A tile on the walk.
+struct Visit<'a> {
+    layer: &'a Layer,
+    tile: usize,
+    frame: TileFrame,
+    /// The station in the tile's coordinates, if the layer's grid can tell.
+    foot: Option<(f64, f64)>,
+}
+
+/// What is needed of a node that an edge may cross.
 #[derive(Clone, Copy, Debug, Default)]
 struct Outline {
     /// Chord to the centroid, m.
     chord: f64,
-    /// No ground of the node lies farther from the centroid, m.
-    radius: f64,
     /// Half widths along the line of sight of the node's two sides, m.
     halves: [f64; 2],
     /// Relative error of shares.
     share_error: f64,
-    /// Must be opened whatever the estimate.
-    open: bool,
 }
 
 /// What a lane came to.
@@ -80,13 +100,16 @@ pub(crate) struct Walk<'a> {
     station: &'a StationFrame,
     edges: &'a Edges,
     bend: Option<Bend>,
-    /// Largest remainders of a node: one that adds up, one that falls either way, one across an edge, all m.
+    /// Inverses of the remainders a node may have: one that adds up, 1/m, one that falls either way, 1/m2.
     inv_smooth: f64,
     inv_rough2: f64,
+    /// Square of the remainder of a node across an edge, m2.
     largest_crossing2: f64,
     lanes: Lanes,
-    outlines: [Outline; LANES],
-    pieces: Vec<Piece>,
+    sights: PieceLanes,
+    /// Lanes that must be opened whatever the estimate.
+    forced: [bool; LANES],
+    opened: Vec<Square>,
     pub(crate) sums: Sums,
 }
 
@@ -110,8 +133,9 @@ impl<'a> Walk<'a> {
             inv_rough2: 1.0 / (rough * rough),
             largest_crossing2: crossing * crossing,
             lanes: Lanes::default(),
-            outlines: [Outline::default(); LANES],
-            pieces: Vec::new(),
+            sights: PieceLanes::default(),
+            forced: [false; LANES],
+            opened: Vec::new(),
             sums: Sums {
                 value: vec![0.0; zones],
                 area: vec![0.0; zones],
@@ -137,19 +161,25 @@ impl<'a> Walk<'a> {
                 }
                 let sight = node_sight(self.station, node);
                 let radius = node.radius_m * self.station.stretch.max(1.0);
-                let distance = self.station.chord(sight.d);
-                let place = self
-                    .edges
-                    .place((distance - radius).max(0.0), distance + radius);
+                let chord = self.station.chord(sight.d);
+                let place = self.edges.place((chord - radius).max(0.0), chord + radius);
                 if place == Whereabouts::Zone(self.edges.outer.len()) {
                     continue;
                 }
-                self.load_upper(batch.len(), node, &sight, radius);
-                batch.push((level, index, place));
+                let i = batch.len();
+                load_upper(&mut self.lanes, i, self.station, node, &sight);
+                self.forced[i] = self.bend.is_some_and(|b| chord - radius < b.radius);
+                batch.push((level, index, place, chord));
             }
-            self.finish_batch(batch.len());
-            for (i, &(level, index, place)) in batch.iter().enumerate() {
-                if self.settle(i, place) == Verdict::Done {
+            self.evaluate(batch.len());
+            for (i, &(level, index, place, chord)) in batch.iter().enumerate() {
+                let half = (1.5 * self.lanes.dmd[i] / self.lanes.d2[i]).sqrt();
+                let outline = Outline {
+                    chord,
+                    halves: [half, half],
+                    share_error: UPPER_SHARE_ERROR,
+                };
+                if self.settle(i, place, &outline) == Verdict::Done {
                     continue;
                 }
                 if level == 0 {
@@ -167,152 +197,120 @@ impl<'a> Walk<'a> {
         }
     }
 
-    fn load_upper(
-        &mut self,
-        i: usize,
-        node: &hillpull_relief::upper::UpperNode,
-        sight: &Sight,
-        radius: f64,
-    ) {
-        let h = self.station.height_m;
-        let (im, ip) = (node.inv_meridian_radius, node.inv_prime_vertical_radius);
-        let (fm, fp) = (1.0 + h * im, 1.0 + h * ip);
-        let east = self.station.components(node.east);
-        let north = self.station.components(node.north);
-        let d = sight.d;
-        let de = d[0] * east[0] + d[1] * east[1] + d[2] * east[2];
-        let dn = d[0] * north[0] + d[1] * north[1] + d[2] * north[2];
-        let [p, q, r] = node.position_m2;
-        let [ce, cn] = node.covariance_m2;
-        let stretch = fm * fp;
-        let dmd = (p * de * de + 2.0 * q * de * dn + r * dn * dn) * stretch;
-        let lanes = &mut self.lanes;
-        lanes.d2[i] = sight.d2;
-        lanes.c0[i] = sight.c0;
-        lanes.b[i] = sight.b;
-        lanes.c1[i] = sight.c1;
-        lanes.k1[i] = im / fm + ip / fp;
-        lanes.area[i] = node.area_m2 * stretch;
-        lanes.dmd[i] = dmd;
-        lanes.trace[i] = (p + r) * stretch;
-        lanes.dc[i] = (de * ce + dn * cn) * stretch.sqrt();
-        lanes.z[i] = node.mean_m - h;
-        lanes.var[i] = node.var_m2;
-        let det = p * r - q * q;
-        let plane = if det > 0.0 {
-            (ce * ce * r - 2.0 * ce * cn * q + cn * cn * p) / det
-        } else {
-            0.0
-        };
-        lanes.rough[i] = (node.var_m2 - plane).max(0.0);
-        let half = (1.5 * dmd / sight.d2).sqrt();
-        let bent = self
-            .bend
-            .is_some_and(|b| sight.d2.sqrt() - radius < b.radius);
-        self.outlines[i] = Outline {
-            chord: self.station.chord(d),
-            radius,
-            halves: [half, half],
-            share_error: UPPER_SHARE_ERROR,
-            open: bent,
-        };
-    }
-
     fn tile(&mut self, layer: &Layer, tile: usize, foot: Option<(f64, f64)>) {
         let frame = TileFrame::new(self.station, &layer.geometry[tile], layer.tile_cells);
         let (mx, my) = layer.tile_middle(tile);
+        let nearest = (frame.chord - frame.radius).max(0.0);
+        let place = self.edges.place(nearest, frame.chord + frame.radius);
+        let bent = self
+            .bend
+            .is_some_and(|b| frame.chord - frame.radius <= b.radius);
         let foot = foot.map(|(col, row)| (col - mx, row - my));
-        let place = self.edges.place(
-            (frame.chord - frame.radius).max(0.0),
-            frame.chord + frame.radius,
-        );
-        let level = layer.tile_level() as i32;
-        let root = Piece {
+        let visit = Visit {
+            layer,
+            tile,
+            frame,
+            foot,
+        };
+        let (level, size) = (layer.tile_level() as i32, layer.tile_cells as f64);
+        self.opened.clear();
+        self.opened.push(Square {
             level,
             morton: 0,
             x: 0.0,
             y: 0.0,
-            size: layer.tile_cells as f64,
-            moments: Moments::default(),
-        };
-        self.pieces.clear();
-        self.open(layer, tile, &frame, foot, &root);
-        let mut batch: Vec<Piece> = Vec::with_capacity(LANES);
-        while !self.pieces.is_empty() {
-            batch.clear();
-            while batch.len() < LANES
-                && let Some(piece) = self.pieces.pop()
+            size,
+        });
+        let mut batch = [Square {
+            level,
+            morton: 0,
+            x: 0.0,
+            y: 0.0,
+            size,
+        }; LANES / 4];
+        while !self.opened.is_empty() {
+            let mut used = 0;
+            while used < batch.len()
+                && let Some(square) = self.opened.pop()
             {
-                self.load_piece(batch.len(), &frame, &piece);
-                batch.push(piece);
+                batch[used] = square;
+                self.load_children(&visit, &square, 4 * used);
+                used += 1;
             }
-            self.finish_batch(batch.len());
-            for i in 0..batch.len() {
-                let place = match place {
-                    Whereabouts::Zone(_) => place,
-                    _ => {
-                        let Outline { chord: r, radius, .. } = self.outlines[i];
-                        self.edges.place((r - radius).max(0.0), r + radius)
-                    }
+            let lanes = 4 * used;
+            self.sights
+                .see(&visit.frame, self.station.height_m, &mut self.lanes);
+            if bent {
+                self.bend_lanes(&visit.frame, &batch, lanes);
+            }
+            self.evaluate(lanes);
+            for i in (0..lanes).rev() {
+                if self.sights.area[i] <= 0.0 {
+                    continue;
+                }
+                let verdict = if let Whereabouts::Zone(_) = place {
+                    self.settle(i, place, &Outline::default())
+                } else {
+                    let width = 0.5 * batch[i / 4].size;
+                    let outline = self.outline(i, width);
+                    let (chord, radius) =
+                        (outline.chord, self.sights.radius(i, width, &visit.frame));
+                    let place = self.edges.place((chord - radius).max(0.0), chord + radius);
+                    self.settle(i, place, &outline)
                 };
-                if self.settle(i, place) == Verdict::Open {
-                    let piece = batch[i];
-                    self.open(layer, tile, &frame, foot, &piece);
+                if verdict == Verdict::Open {
+                    self.opened.push(batch[i / 4].child(i % 4));
+                }
+            }
+            self.forced = [false; LANES];
+        }
+    }
+
+    /// Puts a square's children into four lanes, and the cells next to the station into the near sums.
+    fn load_children(&mut self, visit: &Visit<'_>, square: &Square, lane: usize) {
+        let Visit { layer, tile, .. } = *visit;
+        let half = 0.5 * square.size;
+        if square.level >= 1 && layer.partial[tile].is_none() {
+            match layer.stored_quad(tile, square.level as u32, square.morton) {
+                Some(quad) => self.sights.set_quad(lane, square.x, square.y, half, quad),
+                None => {
+                    let quad = layer.quad_from_posts(tile, square.level as u32, square.morton);
+                    self.sights.set_quad(lane, square.x, square.y, half, &quad);
+                }
+            }
+        } else {
+            let children = if square.level >= 1 {
+                layer.children(tile, square.level as u32, square.morton)
+            } else {
+                let (row, col, x, y) = cell_of(layer, tile, square);
+                CHILD_SIGNS.map(|(sx, sy)| {
+                    layer.piece_moments(row, col, x + 0.5 * half * sx, y + 0.5 * half * sy, half)
+                })
+            };
+            for (k, moments) in children.iter().enumerate() {
+                let child = square.child(k);
+                self.sights.set(lane + k, child.x, child.y, moments);
+            }
+        }
+        if square.level == 1
+            && let Some(foot) = visit.foot
+        {
+            for k in 0..4 {
+                let cell = square.child(k);
+                let near = (cell.x - foot.0).abs().max((cell.y - foot.1).abs()) < 0.5 + NEAR_CELLS;
+                if near && self.sights.area[lane + k] > 0.0 {
+                    self.sights.clear(lane + k);
+                    self.near_cell(visit, foot, &cell);
                 }
             }
         }
     }
 
-    /// Puts a piece's children on the list, and the cells next to the station into the near sums.
-    fn open(
-        &mut self,
-        layer: &Layer,
-        tile: usize,
-        frame: &TileFrame,
-        foot: Option<(f64, f64)>,
-        piece: &Piece,
-    ) {
-        let half = 0.5 * piece.size;
-        let children = if piece.level >= 1 {
-            layer.children(tile, piece.level as u32, piece.morton)
-        } else {
-            let (row, col, x, y) = cell_of(layer, tile, piece);
-            CHILD_SIGNS.map(|(sx, sy)| {
-                layer.piece_moments(row, col, x + 0.5 * half * sx, y + 0.5 * half * sy, half)
-            })
-        };
-        for (k, (moments, sign)) in children.into_iter().zip(CHILD_SIGNS).enumerate().rev() {
-            if moments.area <= 0.0 {
-                continue;
-            }
-            let child = Piece {
-                level: piece.level - 1,
-                morton: 4 * piece.morton + k as u32,
-                x: piece.x + 0.5 * half * sign.0,
-                y: piece.y + 0.5 * half * sign.1,
-                size: half,
-                moments,
-            };
-            if child.level == 0
-                && let Some(foot) = foot
-                && (child.x - foot.0).abs().max((child.y - foot.1).abs()) < 0.5 + NEAR_CELLS
-            {
-                self.near_cell(layer, tile, frame, foot, &child);
-            } else {
-                self.pieces.push(child);
-            }
-        }
-    }
-
-    fn near_cell(
-        &mut self,
-        layer: &Layer,
-        tile: usize,
-        frame: &TileFrame,
-        foot: (f64, f64),
-        cell: &Piece,
-    ) {
-        let (row, col, ..) = cell_of(layer, tile, cell);
+    fn near_cell(&mut self, visit: &Visit<'_>, foot: (f64, f64), cell: &Square) {
+        let Visit {
+            layer, tile, frame, ..
+        } = visit;
+        let (row, col, ..) = cell_of(layer, *tile, cell);
         // the station from the cell's middle
         let (px, py) = (foot.0 - cell.x, foot.1 - cell.y);
         let surface = layer.surface(row, col).about(px, py);
@@ -352,137 +350,105 @@ impl<'a> Walk<'a> {
         }
     }
 
-    fn load_piece(&mut self, i: usize, frame: &TileFrame, piece: &Piece) {
-        let m = &piece.moments;
-        let [gx, gy] = frame.area_slope;
-        let (x0, y0) = (piece.x + m.ox, piece.y + m.oy);
-        // the cells' area changes slowly across the tile: first order
-        let x = x0 + gx * m.mxx + gy * m.mxy;
-        let y = y0 + gx * m.mxy + gy * m.myy;
-        let mut mean = m.mean + gx * m.cx + gy * m.cy;
-        let sight = frame.sight(x, y);
-        let [tx, ty] = &frame.tangents;
-        let d = sight.d;
-        let dx = d[0] * tx[0] + d[1] * tx[1] + d[2] * tx[2];
-        let dy = d[0] * ty[0] + d[1] * ty[1] + d[2] * ty[2];
-        let txx = tx[0] * tx[0] + tx[1] * tx[1] + tx[2] * tx[2];
-        let txy = tx[0] * ty[0] + tx[1] * ty[1] + tx[2] * ty[2];
-        let tyy = ty[0] * ty[0] + ty[1] * ty[1] + ty[2] * ty[2];
-        let dmd = m.mxx * dx * dx + 2.0 * m.mxy * dx * dy + m.myy * dy * dy;
-        let trace = m.mxx * txx + 2.0 * m.mxy * txy + m.myy * tyy;
-        let det = m.mxx * m.myy - m.mxy * m.mxy;
-        let plane = (m.cx * m.cx * m.myy - 2.0 * m.cx * m.cy * m.mxy + m.cy * m.cy * m.mxx) / det;
-        let r = sight.d2.sqrt();
-        let width = piece.size;
-        let radius =
-            frame.radius_per_cell * width * (1.0 + 2.0 * m.ox.abs().max(m.oy.abs()) / width);
-        let mut outline = Outline {
-            chord: self.station.chord(d),
-            radius,
-            halves: [0.5 * width * dx.abs() / r, 0.5 * width * dy.abs() / r],
-            share_error: 0.0,
-            open: false,
-        };
-        let (mut var, mut cx, mut cy) = (m.var, m.cx, m.cy);
-        if let Some(bend) = &self.bend
-            && r - radius < bend.radius
-        {
+    /// What the bend of the ground adds to the lanes.
+    fn bend_lanes(&mut self, frame: &TileFrame, batch: &[Square], lanes: usize) {
+        let Some(bend) = self.bend else { return };
+        for i in 0..lanes {
+            let d2 = self.lanes.d2[i];
+            let r = d2.sqrt();
+            let width = 0.5 * batch[i / 4].size;
+            let radius = self.sights.radius(i, width, frame);
+            // an empty lane holds nothing to compare
+            if r - radius >= bend.radius || self.sights.area[i] <= 0.0 {
+                continue;
+            }
             let by_distance = bend.slope_over_distance(r);
-            let radial = dmd / sight.d2;
-            mean +=
-                bend.rise(r) + 0.5 * (bend.curvature(r) * radial + by_distance * (trace - radial));
-            // gradient of the rise per cell
-            let (wx, wy) = (by_distance * dx, by_distance * dy);
-            var += 2.0 * (wx * cx + wy * cy)
-                + wx * wx * m.mxx
-                + 2.0 * wx * wy * m.mxy
-                + wy * wy * m.myy;
-            cx += m.mxx * wx + m.mxy * wy;
-            cy += m.mxy * wx + m.myy * wy;
-            outline.open = radius * BEND_RESOLUTION > bend.radius;
+            let radial = self.lanes.dmd[i] / d2;
+            let bulge = bend.curvature(r) * radial + by_distance * (self.lanes.trace[i] - radial);
+            let (var, dc) = self.sights.bent(i, by_distance);
+            self.lanes.z[i] += bend.rise(r) + 0.5 * bulge;
+            self.lanes.var[i] += var;
+            self.lanes.dc[i] += dc;
+            self.forced[i] = radius * BEND_RESOLUTION > bend.radius && width > SMALLEST_PIECE;
         }
-        if width < SMALLEST_PIECE {
-            outline.open = false;
-        }
-        let lanes = &mut self.lanes;
-        lanes.d2[i] = sight.d2;
-        lanes.c0[i] = sight.c0;
-        lanes.b[i] = sight.b;
-        lanes.c1[i] = sight.c1;
-        lanes.k1[i] = frame.k1;
-        lanes.area[i] = m.area * frame.area_at(x0, y0);
-        lanes.dmd[i] = dmd;
-        lanes.trace[i] = trace;
-        lanes.dc[i] = dx * cx + dy * cy;
-        lanes.z[i] = mean - self.station.height_m;
-        lanes.var[i] = var;
-        lanes.rough[i] = if det > 0.0 {
-            (m.var - plane).max(0.0)
-        } else {
-            0.0
-        };
-        self.outlines[i] = outline;
     }
 
-    /// Evaluates the first `n` lanes (the rest repeat the first, so that no lane holds nonsense).
-    fn finish_batch(&mut self, n: usize) {
+    /// Outline of the square of the given width in a lane.
+    fn outline(&self, i: usize, width: f64) -> Outline {
+        let s = &self.sights;
+        let scale = 0.5 * width / self.lanes.d2[i].sqrt();
+        Outline {
+            chord: self.station.chord([s.d[0][i], s.d[1][i], s.d[2][i]]),
+            halves: [scale * s.dx[i].abs(), scale * s.dy[i].abs()],
+            share_error: 0.0,
+        }
+    }
+
+    /// Evaluates the lanes, of which the first `n` are in use.
+    fn evaluate(&mut self, n: usize) {
         self.sums.evaluations += n as u64;
-        self.lanes.evaluate();
+        self.lanes.evaluate(self.inv_smooth, self.inv_rough2);
     }
 
     /// Takes a lane's result into the sums if it may be taken whole.
-    fn settle(&mut self, i: usize, place: Whereabouts) -> Verdict {
+    #[inline]
+    fn settle(&mut self, i: usize, place: Whereabouts, outline: &Outline) -> Verdict {
         let lanes = &self.lanes;
-        let outline = &self.outlines[i];
-        let zones = self.edges.outer.len();
-        if place == Whereabouts::Zone(zones) {
-            return Verdict::Done;
-        }
-        let (value, area) = (lanes.value[i], lanes.area[i]);
-        let (smooth, rough2) = (lanes.smooth_error[i], lanes.rough_error2[i]);
-        let small = smooth * self.inv_smooth + rough2 * self.inv_rough2 <= 1.0;
-        if outline.open || !(small && lanes.spread[i] < LARGEST_SPREAD) {
-            return Verdict::Open;
-        }
+        let small = lanes.share[i] <= 1.0 && !self.forced[i];
         match place {
-            Whereabouts::Several => return Verdict::Open,
             Whereabouts::Zone(zone) => {
-                self.sums.value[zone] += value;
-                self.sums.area[zone] += area;
-            }
-            Whereabouts::Across(zone) => {
-                let d2 = lanes.d2[i];
-                let r = d2.sqrt();
-                let radial = lanes.dmd[i] / d2;
-                // the edge is an arc: its mean over the node's breadth lies nearer than its middle
-                let u = self.edges.outer[zone] - outline.chord - 0.5 * (lanes.trace[i] - radial) / r;
-                let (share, first) = share_below(u, outline.halves[0], outline.halves[1]);
-                let rise = lanes.dc[i] / lanes.dmd[i] * r;
-                let gradient = 2.0 * r * lanes.f_s[i] + lanes.f_z[i] * rise;
-                let inside = share * value + area * gradient * first;
-                let spread = area * (lanes.f_z[i].abs() * lanes.rough[i].sqrt() + lanes.second[i]);
-                let error =
-                    spread * (share * (1.0 - share)).sqrt() + outline.share_error * value.abs();
-                if error * error > self.largest_crossing2 {
+                let Some(sum) = self.sums.value.get_mut(zone) else {
+                    return Verdict::Done;
+                };
+                if !small {
                     return Verdict::Open;
                 }
-                self.sums.rough2 += error * error;
-                self.sums.value[zone] += inside;
-                self.sums.area[zone] += share * area;
-                if zone + 1 < zones {
-                    self.sums.value[zone + 1] += value - inside;
-                    self.sums.area[zone + 1] += (1.0 - share) * area;
+                *sum += lanes.value[i];
+                self.sums.area[zone] += lanes.area[i];
+            }
+            Whereabouts::Across(zone) if small => {
+                if !self.divide(i, zone, outline) {
+                    return Verdict::Open;
                 }
             }
+            Whereabouts::Across(_) | Whereabouts::Several => return Verdict::Open,
         }
-        self.sums.smooth += smooth;
-        self.sums.rough2 += rough2;
+        self.sums.smooth += self.lanes.smooth_error[i];
+        self.sums.rough2 += self.lanes.rough_error2[i];
         Verdict::Done
+    }
+
+    /// Divides a lane's value at the outer edge of a zone, unless that errs by too much.
+    fn divide(&mut self, i: usize, zone: usize, outline: &Outline) -> bool {
+        let lanes = &self.lanes;
+        let (value, area) = (lanes.value[i], lanes.area[i]);
+        let r = lanes.d2[i].sqrt();
+        let radial = lanes.dmd[i] / lanes.d2[i];
+        // the edge is an arc: its mean over the node's breadth lies nearer than its middle
+        let u = self.edges.outer[zone] - outline.chord - 0.5 * (lanes.trace[i] - radial) / r;
+        let (share, first) = share_below(u, outline.halves[0], outline.halves[1]);
+        let rise = lanes.dc[i] / lanes.dmd[i] * r;
+        let gradient = 2.0 * r * lanes.f_s[i] + lanes.f_z[i] * rise;
+        let inside = share * value + area * gradient * first;
+        let spread = area * (lanes.f_z[i].abs() * lanes.rough[i].sqrt() + lanes.second[i]);
+        let error = spread * (share * (1.0 - share)).sqrt() + outline.share_error * value.abs();
+        if error * error > self.largest_crossing2 {
+            return false;
+        }
+        let sums = &mut self.sums;
+        sums.rough2 += error * error;
+        sums.value[zone] += inside;
+        sums.area[zone] += share * area;
+        if zone + 1 < sums.value.len() {
+            sums.value[zone + 1] += value - inside;
+            sums.area[zone + 1] += (1.0 - share) * area;
+        }
+        true
     }
 }
 
-/// (row, column) of the cell that a piece is or lies in, and the piece's middle from the cell's.
-fn cell_of(layer: &Layer, tile: usize, piece: &Piece) -> (usize, usize, f64, f64) {
+/// (row, column) of the cell that a square is or lies in, and its middle from the cell's.
+fn cell_of(layer: &Layer, tile: usize, piece: &Square) -> (usize, usize, f64, f64) {
     let half = 0.5 * layer.tile_cells as f64;
     let (row0, col0) = layer.tile_origin(tile);
     if piece.level == 0 {

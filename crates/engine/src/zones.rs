@@ -23,10 +23,7 @@ pub(crate) enum Whereabouts {
 impl Edges {
     pub(crate) fn new(zones_m: &[(f64, f64)]) -> Self {
         Self {
-            outer: zones_m
-                .iter()
-                .map(|z| chord_from_arc_m(z.1))
-                .collect(),
+            outer: zones_m.iter().map(|z| chord_from_arc_m(z.1)).collect(),
         }
     }
 

@@ -4,7 +4,7 @@ use crate::clip::{Ring, clip_rings, ring_area};
 use crate::cover::{hull_ring, trace_rings};
 use crate::error::ReliefError;
 use crate::grid::Grid;
-use crate::layer::{CellState, Layer, PartialTile, Quad};
+use crate::layer::{CellState, Layer, PartialTile, Quad, pack};
 use crate::moments::{Moments, pool, pool_full};
 use crate::tile::TileGeometry;
 use crate::upper::{UpperNode, UpperTree};
@@ -144,14 +144,8 @@ impl Layer {
             .map(|ring| {
                 ring.iter()
                     .filter_map(|p| {
-                        let (r, c) = (
-                            (p[1] as usize).min(self.rows - 2),
-                            (p[0] as usize).min(self.cols - 2),
-                        );
-                        let (tile, _, _) = self.tile_of(r, c);
-                        let (mx, my) = self.tile_middle(tile);
                         other
-                            .locate(self.geometry[tile].foot(p[0] - mx, p[1] - my))
+                            .locate(self.foot_m(p[0], p[1]))
                             .map(|(col, row)| [col, row])
                     })
                     .collect()
@@ -308,15 +302,6 @@ impl Layer {
             }
         }
         nodes
-    }
-}
-
-fn pack(m: &[Moments; 4]) -> Quad {
-    Quad {
-        mean: m.map(|v| v.mean as f32),
-        var: m.map(|v| v.var as f32),
-        cx: m.map(|v| v.cx as f32),
-        cy: m.map(|v| v.cy as f32),
     }
 }
 

@@ -194,6 +194,20 @@ impl Layer {
         })
     }
 
+    /// The stored children of a node of a full tile.
+    #[inline]
+    #[must_use]
+    pub fn stored_quad(&self, tile: usize, level: u32, morton: u32) -> Option<&Quad> {
+        let k = self.quad_index(level, morton)?;
+        Some(&self.quads[tile * self.quads_per_tile + k])
+    }
+
+    /// The children of a node of a full tile at a level that is not stored (1 and 2), from the posts.
+    #[must_use]
+    pub fn quad_from_posts(&self, tile: usize, level: u32, morton: u32) -> Quad {
+        pack(&self.children_from_posts(tile, level, morton))
+    }
+
     /// Moments of the four children of node `morton` at `level` (at least 1) of a tile; width of a child: `2^(level-1)` cells.
     #[must_use]
     pub fn children(&self, tile: usize, level: u32, morton: u32) -> [Moments; 4] {
@@ -284,19 +298,44 @@ impl Layer {
         None
     }
 
+    /// Foot on the ellipsoid, ECEF m, at post coordinates (column, row).
+    #[must_use]
+    pub fn foot_m(&self, col: f64, row: f64) -> Vec3 {
+        let cell = |v: f64, n: usize| (v.max(0.0) as usize).min(n - 2);
+        let (tile, _, _) = self.tile_of(cell(row, self.rows), cell(col, self.cols));
+        let (mx, my) = self.tile_middle(tile);
+        self.geometry[tile].foot(col - mx, row - my)
+    }
+
+    /// Row or column of the cell that a post coordinate lies in; a point on the last post's line belongs to the last cell.
+    fn cell_index(v: f64, posts: usize) -> Option<usize> {
+        let last = (posts - 1) as f64;
+        let v = if (v - last).abs() < 1e-9 { last } else { v };
+        (0.0..=last)
+            .contains(&v)
+            .then(|| (v.floor() as usize).min(posts - 2))
+    }
+
+    /// Whether the layer's own grid has ground at a point, whatever other layers cover.
+    #[must_use]
+    pub fn has_ground(&self, foot_m: Vec3) -> bool {
+        self.locate(foot_m).is_some_and(|(col, row)| {
+            let cell = (
+                Self::cell_index(row, self.rows),
+                Self::cell_index(col, self.cols),
+            );
+            matches!(cell, (Some(r), Some(c)) if !self.surface(r, c).m.is_nan())
+        })
+    }
+
     /// The cell that supplies the surface at a ground point, as (row, column, x, y) with (x, y) from the cell's middle.
     #[must_use]
     pub fn cell_at(&self, foot_m: Vec3) -> Option<(usize, usize, f64, f64)> {
         let (col, row) = self.locate(foot_m)?;
-        // a point on the last post's line belongs to the last cell
-        let snap = |v: f64, n: usize| {
-            let last = (n - 1) as f64;
-            let v = if (v - last).abs() < 1e-9 { last } else { v };
-            (0.0..=last)
-                .contains(&v)
-                .then(|| (v.floor() as usize).min(n - 2))
-        };
-        let (r, c) = (snap(row, self.rows)?, snap(col, self.cols)?);
+        let (r, c) = (
+            Self::cell_index(row, self.rows)?,
+            Self::cell_index(col, self.cols)?,
+        );
         let (x, y) = (col - c as f64 - 0.5, row - r as f64 - 0.5);
         match self.cell_state(r, c) {
             CellState::None => None,
@@ -307,6 +346,17 @@ impl Layer {
                 (piece.area > 0.5 * tiny * tiny).then_some((r, c, x, y))
             }
         }
+    }
+}
+
+/// To single precision.
+#[inline]
+pub(crate) fn pack(m: &[Moments; 4]) -> Quad {
+    Quad {
+        mean: m.map(|v| v.mean as f32),
+        var: m.map(|v| v.var as f32),
+        cx: m.map(|v| v.cx as f32),
+        cy: m.map(|v| v.cy as f32),
     }
 }
 

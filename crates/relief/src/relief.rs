@@ -5,13 +5,15 @@ use crate::cover::union;
 use crate::error::ReliefError;
 use crate::grid::Grid;
 use crate::layer::Layer;
-use hillpull_physics::ellipsoid::Vec3;
+use hillpull_physics::ellipsoid::{Vec3, norm, sub};
 
 /// Layers of relief, the preferred first, with their moment pyramids.
 #[derive(Debug)]
 pub struct Relief {
     /// The layers; every piece of ground belongs to the first that covers it.
     pub layers: Vec<Layer>,
+    /// Points along the borders of ground that no layer covers, and how far from them it may begin, m.
+    gaps: Vec<(Vec3, f64)>,
 }
 
 /// The surface found at a ground point.
@@ -51,7 +53,17 @@ impl Relief {
             layer.mark_covered(&union(finer));
             layer.pool_moments();
         }
-        Ok(Self { layers })
+        let gaps = borders_of_gaps(&layers, &covers);
+        Ok(Self { layers, gaps })
+    }
+
+    /// No ground nearer than this to a foot on the ellipsoid is without a layer, m along the chord.
+    #[must_use]
+    pub fn nearest_gap_m(&self, foot_m: Vec3) -> f64 {
+        self.gaps
+            .iter()
+            .map(|(point, margin)| norm(sub(*point, foot_m)) - margin)
+            .fold(f64::INFINITY, f64::min)
     }
 
     /// The surface at a ground point given by its foot on the ellipsoid (ECEF, m).
@@ -67,4 +79,21 @@ impl Relief {
             })
         })
     }
+}
+
+/// Where the cover of a layer ends and no other layer goes on.
+fn borders_of_gaps(layers: &[Layer], covers: &[Vec<Ring>]) -> Vec<(Vec3, f64)> {
+    let mut gaps = Vec::new();
+    for (k, (layer, rings)) in layers.iter().zip(covers).enumerate() {
+        // rings have a point every 16 cells or more often
+        let margin_m = 24.0 * layer.post_spacing_m;
+        for point in rings.iter().flatten() {
+            let foot = layer.foot_m(point[0], point[1]);
+            let others = layers.iter().enumerate().filter(|(other, _)| *other != k);
+            if !others.into_iter().any(|(_, other)| other.has_ground(foot)) {
+                gaps.push((foot, margin_m));
+            }
+        }
+    }
+    gaps
 }

@@ -119,21 +119,28 @@ fn cell_areas(lonlat_rad: &[[[f64; 2]; 3]; 3], half: f64) -> Option<[[f64; 3]; 3
     let middle = lonlat_rad[1][1][0];
     let turn = std::f64::consts::TAU;
     // longitudes from the middle's, so that the antimeridian doesn't cut the tile
-    let lon = lonlat_rad.map(|row| row.map(|p| p[0] - middle - turn * ((p[0] - middle) / turn).round()));
+    let lon =
+        lonlat_rad.map(|row| row.map(|p| p[0] - middle - turn * ((p[0] - middle) / turn).round()));
     let lat = lonlat_rad.map(|row| row.map(|p| p[1]));
     if lat.iter().flatten().any(|v| v.cos() < LOWEST_COS_LAT) {
         return None;
     }
     let (lon, lat_fit) = (fit(&lon, half), fit(&lat, half));
     let slopes = |c: &Quadratic<f64>, x: f64, y: f64| {
-        (c[1] + 2.0 * c[3] * x + c[4] * y, c[2] + c[4] * x + 2.0 * c[5] * y)
+        (
+            c[1] + 2.0 * c[3] * x + c[4] * y,
+            c[2] + c[4] * x + 2.0 * c[5] * y,
+        )
     };
     Some(std::array::from_fn(|j| {
         std::array::from_fn(|i| {
             let (x, y) = (LATTICE[i] * half, LATTICE[j] * half);
             let ((lon_x, lon_y), (lat_x, lat_y)) = (slopes(&lon, x, y), slopes(&lat_fit, x, y));
             let phi = lat[j][i];
-            let (m, n) = (ellipsoid.meridian_radius_m(phi), ellipsoid.prime_vertical_radius_m(phi));
+            let (m, n) = (
+                ellipsoid.meridian_radius_m(phi),
+                ellipsoid.prime_vertical_radius_m(phi),
+            );
             m * n * phi.cos() * (lon_x * lat_y - lon_y * lat_x).abs()
         })
     }))
