@@ -252,13 +252,7 @@ pub fn relief(grids: Vec<Grid>) -> Relief {
 /// When one has not.
 #[must_use]
 pub fn run(relief: &Relief, stations: &[Station], settings: &Settings) -> Vec<StationEffect> {
-    let results = effects(
-        relief,
-        stations,
-        settings,
-        &|_| (),
-        &AtomicBool::new(false),
-    );
+    let results = effects(relief, stations, settings, &|_| (), &AtomicBool::new(false));
     results
         .into_iter()
         .enumerate()
@@ -272,10 +266,8 @@ pub fn run(relief: &Relief, stations: &[Station], settings: &Settings) -> Vec<St
 /// When no layer covers a station.
 pub fn put_on_surface(relief: &Relief, stations: &mut [Station], above_m: f64) {
     for station in stations {
-        let foot = Ellipsoid::WGS84.foot_ecef_m(
-            station.lon_deg.to_radians(),
-            station.lat_deg.to_radians(),
-        );
+        let foot = Ellipsoid::WGS84
+            .foot_ecef_m(station.lon_deg.to_radians(), station.lat_deg.to_radians());
         let surface = relief.surface_at(foot).expect("a covered station");
         station.height_m = surface.height_m + above_m;
     }

@@ -11,9 +11,7 @@ use hillpull_physics::constants::{EARTH_RADIUS_M, OUTER_RADIUS_M};
 use hillpull_physics::ellipsoid::chord_from_arc_m;
 use hillpull_relief::{Grid, Placement, Relief};
 use hillpull_tests::published::rows;
-use hillpull_tests::relief_fixtures::{
-    Posts, Site, UNIT_MGAL, order, relief, run, settings,
-};
+use hillpull_tests::relief_fixtures::{Posts, Site, UNIT_MGAL, order, relief, run, settings};
 use std::f64::consts::PI;
 
 /// The latitude where the mean curvature is that of the table's sphere.
@@ -135,7 +133,8 @@ fn worst_at_other_latitudes(spacing_deg: f64) -> (f64, f64, f64) {
         let radius_m = 1.0 / site.mean_curvature();
         // zone edges are chords
         let psi = |edge_m: f64| 2.0 * (0.5 * chord_from_arc_m(edge_m) / radius_m).asin();
-        for (station_m, terrain_m) in [(-300.0, 0.0), (1700.0, 0.0), (0.0, 800.0), (2500.0, 600.0)] {
+        for (station_m, terrain_m) in [(-300.0, 0.0), (1700.0, 0.0), (0.0, 800.0), (2500.0, 600.0)]
+        {
             let relief = flat(site, terrain_m, spacing_deg);
             let settings = settings(OUTER_RADIUS_M, &EDGES_M, 0.1);
             let result = &run(&relief, &[station(site, station_m)], &settings)[0];
@@ -190,9 +189,9 @@ fn hills_on_the_sphere() {
     let fractions = [30.0, 60.0, 120.0];
     let table = rows("spherical_hills.csv");
     assert_eq!(table.len(), 12);
-    for cases in table.chunk_by(|a, b| {
-        a.text("hill") == b.text("hill") && a.number("H_m") == b.number("H_m")
-    }) {
+    for cases in table
+        .chunk_by(|a, b| a.text("hill") == b.text("hill") && a.number("H_m") == b.number("H_m"))
+    {
         let (height, width) = (cases[0].number("H_m"), cases[0].number("width_m"));
         let name = cases[0].text("hill");
         let profile = |r: f64| match name {

@@ -205,7 +205,12 @@ fn smooth() -> [Hill; 3] {
             station_m: height,
             spacings_m: [10.0, 5.0, 2.5, 1.25],
             panels_m: thirds(radius),
-            parts: vec![part(radius, paraboloid - disc_m(radius, height), SMOOTH, 0.08)],
+            parts: vec![part(
+                radius,
+                paraboloid - disc_m(radius, height),
+                SMOOTH,
+                0.08,
+            )],
         },
     ]
 }
@@ -265,10 +270,7 @@ fn check(hill: &Hill) {
             part.to_m,
             1e3 * UNIT_MGAL * part.expected_m,
             hill.spacings_m,
-            errors
-                .iter()
-                .map(|e| format!("{e:.3}"))
-                .collect::<Vec<_>>(),
+            errors.iter().map(|e| format!("{e:.3}")).collect::<Vec<_>>(),
         );
         from = part.to_m;
     }
@@ -336,8 +338,7 @@ fn gaussian_hill_off_its_axis() {
                     };
                     let panels = [0.05, 0.15, 0.3, 0.5, 0.75, 1.0].map(|f| f * outer);
                     let curved = SITE.curvature_m(&panels, dh);
-                    let expected =
-                        1e3 * UNIT_MGAL * (curved - SCALE * row.number("geom_m"));
+                    let expected = 1e3 * UNIT_MGAL * (curved - SCALE * row.number("geom_m"));
                     let reach = outer + MARGIN_POSTS * spacing;
                     // all stations of the tables lie at the same place within their cells
                     let posts = Posts::over([x - reach, x + reach], [-reach, reach], spacing)

@@ -36,10 +36,7 @@ fn plane(random: &mut Random, spacing_m: f64) -> Plane {
     let (sin, cos) = random.between(0.0, TAU).sin_cos();
     let posts = Posts::out_to(RADIUS_M + MARGIN_POSTS * spacing_m, spacing_m)
         .turned(random.between(0.0, TAU))
-        .moved(
-            random.between(-1e3, 1e3),
-            random.between(-1e3, 1e3),
-        );
+        .moved(random.between(-1e3, 1e3), random.between(-1e3, 1e3));
     let middle = (posts.rows - 1) as f64 / 2.0;
     let (x0, y0) = posts.xy(middle, middle);
     let height = |x: f64, y: f64| slope_rad.tan() * ((x - x0) * cos + (y - y0) * sin);
@@ -146,10 +143,11 @@ fn tabulated_slopes() {
         };
         for spacing in [30.0, 5.0] {
             let posts = Posts::out_to(radius + MARGIN_POSTS * spacing, spacing).turned(0.3);
-            let relief = relief(vec![SITE.grid(&posts, |x, y| {
-                slope.tan() * (0.6 * x + 0.8 * y)
-            })]);
-            let mut stations = SITE.stations(&[(0.23 * spacing, 0.41 * spacing, 0.0)], Ground::Given);
+            let relief = relief(vec![
+                SITE.grid(&posts, |x, y| slope.tan() * (0.6 * x + 0.8 * y)),
+            ]);
+            let mut stations =
+                SITE.stations(&[(0.23 * spacing, 0.41 * spacing, 0.0)], Ground::Given);
             put_on_surface(&relief, &mut stations, 0.0);
             let result = &run(&relief, &stations, &settings(radius, &[], 1.0))[0];
             let error = 1e3 * (result.terrain_effect_mgal - UNIT_MGAL * expected);
@@ -159,7 +157,10 @@ fn tabulated_slopes() {
                 1e3 * UNIT_MGAL * expected,
                 1e3 * result.numeric_bound_mgal
             );
-            assert!(error.abs() <= 1e3 * result.numeric_bound_mgal + 1e-3, "{row:?}");
+            assert!(
+                error.abs() <= 1e3 * result.numeric_bound_mgal + 1e-3,
+                "{row:?}"
+            );
             found += 1;
         }
     }

@@ -65,10 +65,13 @@ fn ramp_between_two_plains() {
         let spacing = length / [2.0, 6.0, 16.0][k % 3];
         let turn = random.between(0.0, TAU);
         let straight = Posts::out_to(outer_m + 64.0 * spacing, spacing);
-        let relief = relief(vec![SITE.grid_of_posts(&straight.turned(turn), |row, col| {
-            let (x, _) = straight.xy(row as f64, col as f64);
-            (x * slope.tan()).clamp(-0.5 * height, 0.5 * height)
-        })]);
+        let relief = relief(vec![SITE.grid_of_posts(
+            &straight.turned(turn),
+            |row, col| {
+                let (x, _) = straight.xy(row as f64, col as f64);
+                (x * slope.tan()).clamp(-0.5 * height, 0.5 * height)
+            },
+        )]);
         let x = (fraction - 0.5) * length;
         let y = random.between(-1.0, 1.0) * spacing;
         let (sin, cos) = turn.sin_cos();
@@ -194,8 +197,14 @@ fn sinusoid() {
             let formula = -1e3 * UNIT_MGAL * 2.0 * PI * PI * amplitude * amplitude / wavelength;
             assert!((linear / formula - 1.0).abs() < 1e-9);
             let ratio = (expected + limit) / linear;
-            println!("          of the linear value: {ratio:.6}, 1 - {:.3} steepness^2", (1.0 - ratio) / (steepness * steepness));
-            assert!((ratio - 1.0).abs() < 0.4 * steepness * steepness, "{case:?}: {ratio}");
+            println!(
+                "          of the linear value: {ratio:.6}, 1 - {:.3} steepness^2",
+                (1.0 - ratio) / (steepness * steepness)
+            );
+            assert!(
+                (ratio - 1.0).abs() < 0.4 * steepness * steepness,
+                "{case:?}: {ratio}"
+            );
         }
     }
 }
