@@ -4,6 +4,11 @@
 //! The truth is the slow integration of every cell, on the same bilinear surface posted more densely: that changes nothing
 //! of the surface, but makes the slow way finer.
 
+#![expect(
+    clippy::print_stdout,
+    reason = "the table of errors is what a reader of the test wants"
+)]
+
 use hillpull_engine::{Ground, Settings, Station, brute_force};
 use hillpull_relief::{Grid, Relief};
 use hillpull_tests::relief_fixtures::{

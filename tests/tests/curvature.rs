@@ -5,6 +5,11 @@
 //! left: the azimuths differ by e^2 cos^2(lat) / 2 = 0.2 %, which counts squared, 1e-5 of what curvature does, 0.03 uGal in
 //! 3 mGal.
 
+#![expect(
+    clippy::print_stdout,
+    reason = "the table of errors is what a reader of the test wants"
+)]
+
 use hillpull_engine::{Ground, Station};
 use hillpull_physics::bodies::cap::ring_m;
 use hillpull_physics::constants::{EARTH_RADIUS_M, OUTER_RADIUS_M};

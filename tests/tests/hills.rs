@@ -11,6 +11,11 @@
 //! tables' hills are scaled down (a flat form is proportional to its size), the station stands at height 0, and what
 //! curvature adds is put in to first order (`Site::curvature_m`, with its derivation).
 
+#![expect(
+    clippy::print_stdout,
+    reason = "the table of errors is what a reader of the test wants"
+)]
+
 use hillpull_engine::Ground;
 use hillpull_tests::published::{Row, rows};
 use hillpull_tests::relief_fixtures::{
