@@ -9,6 +9,7 @@ mod frame;
 mod kernel;
 mod load;
 mod near;
+mod prefetch;
 mod types;
 mod walk;
 mod zones;

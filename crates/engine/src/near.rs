@@ -12,16 +12,6 @@ use crate::zones::Edges;
 use hillpull_relief::moments::Bilinear;
 
 /// Gauss-Legendre nodes and weights on [-1, 1] (Abramowitz & Stegun 1964, table 25.4).
-const GAUSS_8: [(f64, f64); 8] = [
-    (-0.960_289_856_497_536_2, 0.101_228_536_290_376_26),
-    (-0.796_666_477_413_626_7, 0.222_381_034_453_374_48),
-    (-0.525_532_409_916_329, 0.313_706_645_877_887_3),
-    (-0.183_434_642_495_649_8, 0.362_683_783_378_362),
-    (0.183_434_642_495_649_8, 0.362_683_783_378_362),
-    (0.525_532_409_916_329, 0.313_706_645_877_887_3),
-    (0.796_666_477_413_626_7, 0.222_381_034_453_374_48),
-    (0.960_289_856_497_536_2, 0.101_228_536_290_376_26),
-];
 const GAUSS_6: [(f64, f64); 6] = [
     (-0.932_469_514_203_152, 0.171_324_492_379_170_36),
     (-0.661_209_386_466_264_5, 0.360_761_573_048_138_6),
@@ -29,6 +19,12 @@ const GAUSS_6: [(f64, f64); 6] = [
     (0.238_619_186_083_196_9, 0.467_913_934_572_691),
     (0.661_209_386_466_264_5, 0.360_761_573_048_138_6),
     (0.932_469_514_203_152, 0.171_324_492_379_170_36),
+];
+const GAUSS_4: [(f64, f64); 4] = [
+    (-0.861_136_311_594_052_6, 0.347_854_845_137_453_85),
+    (-0.339_981_043_584_856_26, 0.652_145_154_862_546_1),
+    (0.339_981_043_584_856_26, 0.652_145_154_862_546_1),
+    (0.861_136_311_594_052_6, 0.347_854_845_137_453_85),
 ];
 
 /// Widest panel in s.
@@ -92,7 +88,7 @@ pub(crate) fn add_polygon(
         let half = 0.5 * (s1 - s0) / panels as f64;
         for panel in 0..panels {
             let middle = s0 + half * (2 * panel + 1) as f64;
-            for (node, weight) in GAUSS_6 {
+            for (node, weight) in GAUSS_4 {
                 let s = middle + half * node;
                 let f = (p * s.sinh() - y0) / length;
                 let rho = p * s.cosh();
@@ -142,7 +138,7 @@ fn add_ray(
         if to > from {
             let half = 0.5 * (to - from);
             let (mut value, mut area) = (0.0, 0.0);
-            for (node, weight) in GAUSS_8 {
+            for (node, weight) in GAUSS_6 {
                 let t = from + half * (1.0 + node);
                 let (px, py) = (x + t * end[0], y + t * end[1]);
                 let sight = tile.sight(px, py);
@@ -150,7 +146,7 @@ fn add_ray(
                 area += da;
                 value += da * column(sight.d2, sight.c0, sight.b, sight.c1, tile.k1, height(t));
             }
-            *sums.evaluations += GAUSS_8.len() as u64;
+            *sums.evaluations += GAUSS_6.len() as u64;
             if zone < sums.value.len() {
                 sums.value[zone] += scale * value;
                 sums.area[zone] += scale * area;

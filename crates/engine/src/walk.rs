@@ -5,15 +5,22 @@ use crate::frame::{StationFrame, TileFrame, node_sight};
 use crate::kernel::{LANES, Lanes};
 use crate::load::{PieceLanes, load_upper};
 use crate::near::{NearContext, NearSums, add_polygon};
+use crate::prefetch::ask_for;
 use crate::zones::{Edges, Whereabouts, share_below};
 use hillpull_relief::clip::{edges, square};
 use hillpull_relief::layer::{CellState, Layer, morton_decode};
 use hillpull_relief::moments::CHILD_SIGNS;
 
-/// Nodes that a walk is expected to take: sets the share of the tolerance of each.
-const EXPECTED_NODES: f64 = 2000.0;
+/// Nodes that set the share of the tolerance of each, at a tolerance of `USUAL_TOLERANCE` m (1 uGal in common rock).
+///
+/// Chosen so that the bound comes to about half the tolerance. A smooth node's remainder goes with the sixth power of its
+/// size and the nodes' number with the inverse square, hence the cube root.
+const EXPECTED_NODES: f64 = 1200.0;
+const USUAL_TOLERANCE: f64 = 0.056;
 /// Nodes expected across zone edges.
-const EXPECTED_CROSSINGS: f64 = 1500.0;
+const EXPECTED_CROSSINGS: f64 = 600.0;
+/// Part of a node's unevenness by which its two sides of an edge differ: most of it is finer than the sides.
+const UNEVEN_SIDES: f64 = 0.3;
 /// The bound counts errors that fall either way as this many times the root of their summed squares.
 pub(crate) const ROUGH_FACTOR: f64 = 4.0;
 /// A node over the bent ground must be smaller than the bending radius by this factor.
@@ -121,8 +128,9 @@ impl<'a> Walk<'a> {
         bend: Option<Bend>,
         tolerance: f64,
     ) -> Self {
-        let smooth = 0.5 * tolerance / EXPECTED_NODES;
-        let rough = 0.5 * tolerance / (ROUGH_FACTOR * EXPECTED_NODES.sqrt());
+        let nodes = EXPECTED_NODES * (USUAL_TOLERANCE / tolerance).cbrt();
+        let smooth = 0.5 * tolerance / nodes;
+        let rough = 0.5 * tolerance / (ROUGH_FACTOR * nodes.sqrt());
         let crossing = 0.3 * tolerance / (ROUGH_FACTOR * EXPECTED_CROSSINGS.sqrt());
         let zones = edges.outer.len();
         Self {
@@ -186,13 +194,19 @@ impl<'a> Walk<'a> {
                     tiles.push(index);
                 } else {
                     let cols = tree.shapes[level].1;
-                    let children = tree.children(level, index / cols, index % cols);
-                    pending.extend(children.map(|k| (level - 1, k)));
+                    for k in tree.children(level, index / cols, index % cols) {
+                        ask_for(&tree.levels[level - 1][k]);
+                        pending.push((level - 1, k));
+                    }
                 }
             }
         }
         let foot = layer.locate(self.station.foot_m);
-        for tile in tiles {
+        for (k, &tile) in tiles.iter().enumerate() {
+            if let Some(&next) = tiles.get(k + 1) {
+                ask_for(&layer.geometry[next]);
+                ask_for_children(layer, next, layer.tile_level(), 0);
+            }
             self.tile(layer, tile, foot);
         }
     }
@@ -259,7 +273,11 @@ impl<'a> Walk<'a> {
                     self.settle(i, place, &outline)
                 };
                 if verdict == Verdict::Open {
-                    self.opened.push(batch[i / 4].child(i % 4));
+                    let square = batch[i / 4].child(i % 4);
+                    if square.level >= 1 {
+                        ask_for_children(layer, tile, square.level as u32, square.morton);
+                    }
+                    self.opened.push(square);
                 }
             }
             self.forced = [false; LANES];
@@ -431,7 +449,8 @@ impl<'a> Walk<'a> {
         let gradient = 2.0 * r * lanes.f_s[i] + lanes.f_z[i] * rise;
         let inside = share * value + area * gradient * first;
         let spread = area * (lanes.f_z[i].abs() * lanes.rough[i].sqrt() + lanes.second[i]);
-        let error = spread * (share * (1.0 - share)).sqrt() + outline.share_error * value.abs();
+        let error = UNEVEN_SIDES * spread * (share * (1.0 - share)).sqrt()
+            + outline.share_error * value.abs();
         if error * error > self.largest_crossing2 {
             return false;
         }
@@ -444,6 +463,23 @@ impl<'a> Walk<'a> {
             sums.area[zone + 1] += (1.0 - share) * area;
         }
         true
+    }
+}
+
+/// Asks for what the children of a node will be loaded from.
+#[inline]
+fn ask_for_children(layer: &Layer, tile: usize, level: u32, morton: u32) {
+    if let Some(quad) = layer.stored_quad(tile, level, morton) {
+        ask_for(quad);
+    } else if level == 2 {
+        let (row0, col0) = layer.tile_origin(tile);
+        let (x, y) = morton_decode(morton);
+        for row in 0..5 {
+            let post = (row0 + 4 * y as usize + row) * layer.cols + col0 + 4 * x as usize;
+            if let Some(height) = layer.heights_m.get(post) {
+                ask_for(height);
+            }
+        }
     }
 }
 
