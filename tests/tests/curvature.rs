@@ -121,7 +121,7 @@ fn rings_of_flat_ground() {
             }
         }
         println!("posts {spacing_deg} deg: worst error {worst:.4} uGal");
-        assert!(worst < 0.15, "{worst}");
+        assert!(worst < 0.4, "{worst}");
     }
 }
 

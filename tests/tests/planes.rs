@@ -85,6 +85,7 @@ fn a_thousand_stations_on_planes() {
         .map(|k| plane(&mut Random(k as u64), [30.0, 10.0, 3.0, 45.0, 1.5][k % 5]))
         .collect();
     let (mut worst, mut worst_bound, mut far_off) = (0.0_f64, 0.0_f64, 0);
+    let mut beyond = Vec::new();
     for spacing in [45.0, 30.0, 10.0, 3.0, 1.5] {
         let (mut worst_here, mut bound_here) = (0.0_f64, 0.0_f64);
         for plane in planes.iter().filter(|p| p.spacing_m == spacing) {
@@ -92,10 +93,15 @@ fn a_thousand_stations_on_planes() {
             for (result, station) in plane.run(&plane.stations).iter().zip(&plane.stations) {
                 let error = (1e3 * result.terrain_effect_mgal - expected).abs();
                 let bound = 1e3 * result.numeric_bound_mgal;
+                if error > bound + 1e-3 {
+                    beyond.push(format!(
+                        "{:.1} degrees, posts {spacing} m, {station:?}: error {error:.4} uGal of {expected:.2}, bound {bound:.4}",
+                        plane.slope_rad.to_degrees()
+                    ));
+                }
                 assert!(
-                    error <= bound + 1e-3 && bound <= 1.0,
-                    "{} degrees, posts {spacing} m, {station:?}: error {error} uGal of {expected}, bound {bound}",
-                    plane.slope_rad.to_degrees()
+                    error <= 1.0 && bound <= 1.0,
+                    "{station:?}: {error} uGal, bound {bound}"
                 );
                 worst_here = worst_here.max(error);
                 bound_here = bound_here.max(bound);
@@ -115,9 +121,9 @@ fn a_thousand_stations_on_planes() {
         "{count} stations on {PLANES} planes: worst error {worst:.5} uGal, worst bound {worst_bound:.5} uGal; \
          {far_off} would be off by more than 10 uGal in the middle of their cells"
     );
-    assert!(worst <= 1.0);
     // what makes the positions count: a program that moves its stations to the middles of cells does not pass
     assert!(far_off > count * 8 / 10, "{far_off}");
+    assert!(beyond.is_empty(), "above their bounds: {beyond:#?}");
 }
 
 /// The closed form with the complete elliptic integral, from the table of closed forms (high precision), at its slopes and
@@ -125,6 +131,7 @@ fn a_thousand_stations_on_planes() {
 #[test]
 fn tabulated_slopes() {
     let mut found = 0;
+    let mut beyond = Vec::new();
     for row in rows("closed_forms.csv") {
         let case = row.text("case");
         if !case.starts_with("infinite plane slope") {
@@ -157,14 +164,17 @@ fn tabulated_slopes() {
                 1e3 * UNIT_MGAL * expected,
                 1e3 * result.numeric_bound_mgal
             );
-            assert!(
-                error.abs() <= 1e3 * result.numeric_bound_mgal + 1e-3,
-                "{row:?}"
-            );
+            if error.abs() > 1e3 * result.numeric_bound_mgal + 1e-3 {
+                beyond.push(format!(
+                    "{} posts {spacing} m: {error:.4} uGal",
+                    row.text("parameters")
+                ));
+            }
             found += 1;
         }
     }
     assert_eq!(found, 30);
+    assert!(beyond.is_empty(), "above their bounds: {beyond:#?}");
 }
 
 /// A station a little above or below the plane, as surveyed heights are: between the two the surface is crossed.
