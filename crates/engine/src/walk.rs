@@ -20,7 +20,7 @@ const USUAL_TOLERANCE: f64 = 0.056;
 /// Nodes expected across zone edges.
 const EXPECTED_CROSSINGS: f64 = 600.0;
 /// Part of a node's unevenness by which its two sides of an edge differ: most of it is finer than the sides.
-const UNEVEN_SIDES: f64 = 0.3;
+const UNEVEN_SIDES: f64 = 0.5;
 /// The bound counts errors that fall either way as this many times the root of their summed squares.
 pub(crate) const ROUGH_FACTOR: f64 = 4.0;
 /// A node over the bent ground must be smaller than the bending radius by this factor.
@@ -448,8 +448,8 @@ impl<'a> Walk<'a> {
         let rise = lanes.dc[i] / lanes.dmd[i] * r;
         let gradient = 2.0 * r * lanes.f_s[i] + lanes.f_z[i] * rise;
         let inside = share * value + area * gradient * first;
-        let spread = area * (lanes.f_z[i].abs() * lanes.rough[i].sqrt() + lanes.second[i]);
-        let error = UNEVEN_SIDES * spread * (share * (1.0 - share)).sqrt()
+        let uneven = UNEVEN_SIDES * lanes.f_z[i].abs() * lanes.rough[i].sqrt();
+        let error = area * (uneven + lanes.second[i]) * (share * (1.0 - share)).sqrt()
             + outline.share_error * value.abs();
         if error * error > self.largest_crossing2 {
             return false;
