@@ -78,6 +78,14 @@ impl PieceLanes {
         tile.radius_per_cell * (width + 2.0 * self.offset[i])
     }
 
+    /// Half widths of a piece's two sides by the line of sight, m2: those of even spreads with the piece's moments.
+    pub(crate) fn halves(&self, i: usize) -> [f64; 2] {
+        [
+            (3.0 * self.mxx[i]).sqrt() * self.dx[i].abs(),
+            (3.0 * self.myy[i]).sqrt() * self.dy[i].abs(),
+        ]
+    }
+
     /// What a rise of the ground adds to variance and D'c, its slope by distance over the distance given.
     pub(crate) fn bent(&self, i: usize, by_distance: f64) -> (f64, f64) {
         let (dx, dy) = (self.dx[i], self.dy[i]);

@@ -4,7 +4,7 @@ use crate::bend::Bend;
 use crate::frame::{StationFrame, TileFrame, node_sight};
 use crate::kernel::{LANES, Lanes};
 use crate::load::{PieceLanes, load_upper};
-use crate::near::{NearContext, NearSums, add_polygon};
+use crate::near::{NearCell, NearSums};
 use crate::prefetch::ask_for;
 use crate::zones::{Edges, Whereabouts, share_below};
 use hillpull_relief::clip::{edges, square};
@@ -27,8 +27,8 @@ pub(crate) const ROUGH_FACTOR: f64 = 4.0;
 const BEND_RESOLUTION: f64 = 8.0;
 /// Cells within this distance of the station (in cells) are integrated in polar form.
 const NEAR_CELLS: f64 = 0.5;
-/// Uncertainty of the share of an upper node across an edge, whose outline isn't known.
-const UPPER_SHARE_ERROR: f64 = 0.05;
+/// Uncertainty of the share of a node across an edge whose outline isn't known.
+const UNKNOWN_OUTLINE: f64 = 0.05;
 /// Sub-cells are not split below this width, cells.
 const SMALLEST_PIECE: f64 = 1e-6;
 
@@ -185,7 +185,7 @@ impl<'a> Walk<'a> {
                 let outline = Outline {
                     chord,
                     halves: [half, half],
-                    share_error: UPPER_SHARE_ERROR,
+                    share_error: UNKNOWN_OUTLINE,
                 };
                 if self.settle(i, place, &outline) == Verdict::Done {
                     continue;
@@ -331,39 +331,24 @@ impl<'a> Walk<'a> {
         let (row, col, ..) = cell_of(layer, *tile, cell);
         // the station from the cell's middle
         let (px, py) = (foot.0 - cell.x, foot.1 - cell.y);
-        let surface = layer.surface(row, col).about(px, py);
-        let context = NearContext {
+        let near = NearCell {
             station: self.station,
             edges: self.edges,
             bend: self.bend.as_ref(),
+            tile: frame,
+            foot,
+            surface: layer.surface(row, col).about(px, py),
         };
         let mut sums = NearSums {
             value: &mut self.sums.value,
             area: &mut self.sums.area,
             evaluations: &mut self.sums.evaluations,
         };
-        let outline = square(-px, -py, 1.0);
-        add_polygon(
-            &context,
-            frame,
-            foot,
-            &surface,
-            edges(&outline),
-            1.0,
-            &mut sums,
-        );
+        near.add_polygon(edges(&square(-px, -py, 1.0)), 1.0, &mut sums);
         if layer.cell_state(row, col) == CellState::Clipped {
             for ring in layer.cell_rings(row, col) {
                 let ring: Vec<_> = ring.iter().map(|p| [p[0] - px, p[1] - py]).collect();
-                add_polygon(
-                    &context,
-                    frame,
-                    foot,
-                    &surface,
-                    edges(&ring),
-                    -1.0,
-                    &mut sums,
-                );
+                near.add_polygon(edges(&ring), -1.0, &mut sums);
             }
         }
     }
@@ -391,14 +376,14 @@ impl<'a> Walk<'a> {
         }
     }
 
-    /// Outline of the square of the given width in a lane.
+    /// Outline of a lane's piece: a full square's sides are known, of a part only its spread.
     fn outline(&self, i: usize, width: f64) -> Outline {
         let s = &self.sights;
-        let scale = 0.5 * width / self.lanes.d2[i].sqrt();
+        let full = s.area[i] >= width * width * (1.0 - 1e-9);
         Outline {
             chord: self.station.chord([s.d[0][i], s.d[1][i], s.d[2][i]]),
-            halves: [scale * s.dx[i].abs(), scale * s.dy[i].abs()],
-            share_error: 0.0,
+            halves: s.halves(i).map(|h| h / self.lanes.d2[i].sqrt()),
+            share_error: if full { 0.0 } else { UNKNOWN_OUTLINE },
         }
     }
 

@@ -5,15 +5,16 @@ use crate::cover::union;
 use crate::error::ReliefError;
 use crate::grid::Grid;
 use crate::layer::Layer;
-use hillpull_physics::ellipsoid::{Vec3, norm, sub};
+use hillpull_physics::constants::EARTH_RADIUS_M;
+use hillpull_physics::ellipsoid::{Vec3, dot, norm, scale, sub};
 
 /// Layers of relief, the preferred first, with their moment pyramids.
 #[derive(Debug)]
 pub struct Relief {
     /// The layers; every piece of ground belongs to the first that covers it.
     pub layers: Vec<Layer>,
-    /// Points along the borders of ground that no layer covers, and how far from them it may begin, m.
-    gaps: Vec<(Vec3, f64)>,
+    /// Borders of ground that no layer covers, as pieces from foot to foot.
+    gaps: Vec<[Vec3; 2]>,
 }
 
 /// The surface found at a ground point.
@@ -60,10 +61,14 @@ impl Relief {
     /// No ground nearer than this to a foot on the ellipsoid is without a layer, m along the chord.
     #[must_use]
     pub fn nearest_gap_m(&self, foot_m: Vec3) -> f64 {
-        self.gaps
-            .iter()
-            .map(|(point, margin)| norm(sub(*point, foot_m)) - margin)
-            .fold(f64::INFINITY, f64::min)
+        let distance = |[start, end]: &[Vec3; 2]| {
+            let (along, to) = (sub(*end, *start), sub(foot_m, *start));
+            let share = (dot(to, along) / dot(along, along).max(f64::MIN_POSITIVE)).clamp(0.0, 1.0);
+            // the border bulges out of the straight line by at most length^2 / 8 R, taken double
+            let bulge = dot(along, along) / (4.0 * EARTH_RADIUS_M);
+            norm(sub(to, scale(along, share))) - bulge
+        };
+        self.gaps.iter().map(distance).fold(f64::INFINITY, f64::min)
     }
 
     /// The surface at a ground point given by its foot on the ellipsoid (ECEF, m).
@@ -82,16 +87,23 @@ impl Relief {
 }
 
 /// Where the cover of a layer ends and no other layer goes on.
-fn borders_of_gaps(layers: &[Layer], covers: &[Vec<Ring>]) -> Vec<(Vec3, f64)> {
+fn borders_of_gaps(layers: &[Layer], covers: &[Vec<Ring>]) -> Vec<[Vec3; 2]> {
     let mut gaps = Vec::new();
     for (k, (layer, rings)) in layers.iter().zip(covers).enumerate() {
-        // rings have a point every 16 cells or more often
-        let margin_m = 24.0 * layer.post_spacing_m;
-        for point in rings.iter().flatten() {
-            let foot = layer.foot_m(point[0], point[1]);
-            let others = layers.iter().enumerate().filter(|(other, _)| *other != k);
-            if !others.into_iter().any(|(_, other)| other.has_ground(foot)) {
-                gaps.push((foot, margin_m));
+        for ring in rings {
+            let feet: Vec<Vec3> = ring.iter().map(|p| layer.foot_m(p[0], p[1])).collect();
+            let bare = |foot: &Vec3| {
+                !layers
+                    .iter()
+                    .enumerate()
+                    .any(|(j, other)| j != k && other.has_ground(*foot))
+            };
+            let open: Vec<bool> = feet.iter().map(bare).collect();
+            for i in 0..feet.len() {
+                let next = (i + 1) % feet.len();
+                if open[i] || open[next] {
+                    gaps.push([feet[i], feet[next]]);
+                }
             }
         }
     }
