@@ -205,7 +205,47 @@ impl Layer {
     /// The children of a node of a full tile at a level that is not stored (1 and 2), from the posts.
     #[must_use]
     pub fn quad_from_posts(&self, tile: usize, level: u32, morton: u32) -> Quad {
-        pack(&self.children_from_posts(tile, level, morton))
+        let (x, y) = morton_decode(morton);
+        let (row0, col0) = self.tile_origin(tile);
+        let (row, col) = (
+            row0 + ((y as usize) << level),
+            col0 + ((x as usize) << level),
+        );
+        if level == 1 {
+            return self.cell_quad(row, col);
+        }
+        let mut out = Quad::default();
+        for (k, (r, c)) in [(0, 0), (0, 2), (2, 0), (2, 2)].into_iter().enumerate() {
+            let cells = self.cell_quad(row + r, col + c);
+            let pooled = pool_quad(&cells);
+            out.mean[k] = pooled[0] as f32;
+            out.var[k] = pooled[1] as f32;
+            out.cx[k] = pooled[2] as f32;
+            out.cy[k] = pooled[3] as f32;
+        }
+        out
+    }
+
+    /// Moments of 2 x 2 full cells (see [`Bilinear::moments`]).
+    #[inline]
+    fn cell_quad(&self, row: usize, col: usize) -> Quad {
+        let posts: [&[f32]; 3] = std::array::from_fn(|k| {
+            let start = (row + k) * self.cols + col;
+            &self.heights_m[start..start + 3]
+        });
+        let mut out = Quad::default();
+        for k in 0..4 {
+            let (r, c) = (k / 2, k % 2);
+            let (h00, h01) = (f64::from(posts[r][c]), f64::from(posts[r][c + 1]));
+            let (h10, h11) = (f64::from(posts[r + 1][c]), f64::from(posts[r + 1][c + 1]));
+            let surface = Bilinear::from_corners([[h00, h01], [h10, h11]]);
+            let m = surface.moments(1.0);
+            out.mean[k] = m.mean as f32;
+            out.var[k] = m.var as f32;
+            out.cx[k] = m.cx as f32;
+            out.cy[k] = m.cy as f32;
+        }
+        out
     }
 
     /// Moments of the four children of node `morton` at `level` (at least 1) of a tile; width of a child: `2^(level-1)` cells.
@@ -358,6 +398,13 @@ pub(crate) fn pack(m: &[Moments; 4]) -> Quad {
         cx: m.map(|v| v.cx as f32),
         cy: m.map(|v| v.cy as f32),
     }
+}
+
+/// Mean, variance and covariances of the square that four cells make (see [`pool_full`]).
+#[inline]
+fn pool_quad(cells: &Quad) -> [f64; 4] {
+    let m = pool_full(&unpack(cells, 1.0), 1.0);
+    [m.mean, m.var, m.cx, m.cy]
 }
 
 #[inline]
