@@ -15,14 +15,14 @@ use hillpull_relief::moments::CHILD_SIGNS;
 ///
 /// Chosen so that the bound comes to about half the tolerance. A smooth node's remainder goes with the sixth power of its
 /// size and the nodes' number with the inverse square, hence the cube root.
-const EXPECTED_NODES: f64 = 1200.0;
+const EXPECTED_NODES: f64 = 1000.0;
 const USUAL_TOLERANCE: f64 = 0.056;
 /// Nodes expected across zone edges.
 const EXPECTED_CROSSINGS: f64 = 600.0;
 /// Part of a node's unevenness by which its two sides of an edge differ: most of it is finer than the sides.
 const UNEVEN_SIDES: f64 = 0.5;
 /// The bound counts errors that fall either way as this many times the root of their summed squares.
-pub(crate) const ROUGH_FACTOR: f64 = 4.0;
+pub(crate) const ROUGH_FACTOR: f64 = 3.0;
 /// A node over the bent ground must be smaller than the bending radius by this factor.
 const BEND_RESOLUTION: f64 = 8.0;
 /// Cells within this distance of the station (in cells) are integrated in polar form.
