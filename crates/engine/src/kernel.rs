@@ -29,10 +29,10 @@ const FOURTH_ORDER: f64 = 2.1;
 const FOURTH_ORDER_STEEP: f64 = 0.8;
 /// What is left of a smooth node's remainder in the same units, of the terms' sizes, for gentle columns and for steep ones;
 /// calibrated against brute force.
-const SMOOTH_REMAINDER: f64 = 0.25;
+const SMOOTH_REMAINDER: f64 = 0.15;
 const SMOOTH_REMAINDER_STEEP: f64 = 0.7;
 /// The same for the spread of heights, in units of (variance) / l^2.
-const HEIGHT_REMAINDER: f64 = 1.5;
+const HEIGHT_REMAINDER: f64 = 1.2;
 /// Third-order remainder of a rough node in units of its leading terms, calibrated against brute force.
 const ROUGH_REMAINDER: f64 = 0.6;
 

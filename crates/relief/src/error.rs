@@ -290,7 +290,7 @@ impl ReliefError {
                 "use a coarser DEM for the far zone, or cut it to the area of the survey".to_owned()
             }
             Fault::NotResampled { .. } => {
-                "give the CRS and the spacing of the working grid".to_owned()
+                "warp the DEM to a CRS in metres with GDAL's own tools, and give the result".to_owned()
             }
             Fault::Stopped => return None,
         };

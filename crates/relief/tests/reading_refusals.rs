@@ -419,7 +419,10 @@ fn resampling_that_cannot_be() {
         text,
         "reading DEM a.tif: it cannot be resampled: a spacing of -3 makes no grid"
     );
-    assert_eq!(hint, "give the CRS and the spacing of the working grid");
+    assert_eq!(
+        hint,
+        "warp the DEM to a CRS in metres with GDAL's own tools, and give the result"
+    );
     let nowhere = Resample {
         crs: Some("EPSG:999999".to_owned()),
         ..Resample::default()
