@@ -37,7 +37,7 @@ pub struct Posts {
     pub rows: usize,
     /// Columns.
     pub cols: usize,
-    /// x = a[0] + a[1] col + a[2] row, y = a[3] + a[4] col + a[5] row.
+    /// `x = a[0] + a[1] col + a[2] row`, `y = a[3] + a[4] col + a[5] row`.
     pub affine: [f64; 6],
 }
 

@@ -323,15 +323,17 @@ mod tests {
             }
         }
         let q = s * s / 12.0;
-        let mut lanes = Lanes::default();
-        lanes.d2 = [x0 * x0; LANES];
-        lanes.c1 = [-1.0; LANES];
-        lanes.area = [s * s; LANES];
-        lanes.dmd = [x0 * x0 * q; LANES];
-        lanes.trace = [2.0 * q; LANES];
-        lanes.dc = [x0 * slope * q; LANES];
-        lanes.z = [slope * x0; LANES];
-        lanes.var = [slope * slope * q; LANES];
+        let mut lanes = Lanes {
+            d2: [x0 * x0; LANES],
+            c1: [-1.0; LANES],
+            area: [s * s; LANES],
+            dmd: [x0 * x0 * q; LANES],
+            trace: [2.0 * q; LANES],
+            dc: [x0 * slope * q; LANES],
+            z: [slope * x0; LANES],
+            var: [slope * slope * q; LANES],
+            ..Lanes::default()
+        };
         lanes.evaluate(1.0, 1.0);
         // second order: remainder of fourth order in 100 m / 1000 m
         assert_relative_eq!(lanes.value[3], sum, max_relative = 3e-6);

@@ -15,7 +15,7 @@ use hillpull_relief::moments::CHILD_SIGNS;
 ///
 /// Chosen so that the bound comes to about half the tolerance. A smooth node's remainder goes with the sixth power of its
 /// size and the nodes' number with the inverse square, hence the cube root.
-const EXPECTED_NODES: f64 = 1000.0;
+const EXPECTED_NODES: f64 = 800.0;
 const USUAL_TOLERANCE: f64 = 0.056;
 /// Nodes expected across zone edges.
 const EXPECTED_CROSSINGS: f64 = 600.0;

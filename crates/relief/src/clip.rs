@@ -194,7 +194,7 @@ mod tests {
         for i in -2..2 {
             for j in -2..2 {
                 let (x, y) = (f64::from(i), f64::from(j));
-                sum += clip_rings(&[diamond.clone()], [x, x + 1.0], [y, y + 1.0])
+                sum += clip_rings(std::slice::from_ref(&diamond), [x, x + 1.0], [y, y + 1.0])
                     .iter()
                     .map(|r| ring_area(r))
                     .sum::<f64>();

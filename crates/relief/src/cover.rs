@@ -161,9 +161,10 @@ mod tests {
     fn rings_hold_the_valid_cells() {
         // a hole, a corner cut away, and two cells that touch in a point
         let valid = |r: usize, c: usize| {
-            !(r == 20 && (30..35).contains(&c))
-                && !(r < 3 && c < 4)
-                && !((r, c) == (40, 10) || (r, c) == (41, 11))
+            let hole = r == 20 && (30..35).contains(&c);
+            let corner = r < 3 && c < 4;
+            let touching = (r, c) == (40, 10) || (r, c) == (41, 11);
+            !(hole || corner || touching)
         };
         let rings = trace_rings(50, 70, valid);
         assert_relative_eq!(area(&rings), 50.0 * 70.0 - 5.0 - 12.0 - 2.0);
