@@ -88,12 +88,12 @@ fn heights_missing_or_absurd_leave_the_others_their_results() {
     let ran = folder.run(HILL_RUN);
     assert_eq!(ran.code, Some(1), "{}", ran.stderr);
     assert_snapshot!(folder.notes("out.csv"), @"
-    A | result | covered 0.9999 | no DEM for under 0.1 % of zone 230 to 800 m
+    A | result | covered 1.0000 | 
     B | no result | covered  | height missing
     C | no result | covered  | height missing
     D | no result | covered  | height is not a number
     E | no result | covered  | height 123456 m is absurd
-    F | result | covered 0.9999 | no DEM for under 0.1 % of zone 230 to 800 m
+    F | result | covered 1.0000 |
     ");
 }
 

@@ -94,8 +94,8 @@ fn the_summary() {
     zones     0 to 230 m          24.1 %
               230 to 800 m        75.9 %
     bound     worst [...] µGal, at flank; asked 1 µGal
-    coverage  lowest 99.9 % of the disc, at foot
-    notes     3 stations: top, flank, foot
+    coverage  the whole disc at every station
+    notes     none
     model     density 2670 kg/m3, G 6.6743e-11 m3 kg-1 s-2, outer radius 800 m, ground bend
     time      [...]
     written   out.csv, provenance in out.csv.provenance.toml
