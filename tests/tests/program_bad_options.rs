@@ -148,16 +148,6 @@ fn survey_file_with_wrong_type() {
 }
 
 #[test]
-fn output_suffix_unknown() {
-    let folder = Folder::with_survey();
-    assert_snapshot!(refused(&folder, &HILL_RUN.replace("out.csv", "out.xls")), @"
-    error: output out.xls: its suffix says no format that can be written
-
-    hint: end the name with .csv or .gpkg, or use - for CSV on standard output
-    ");
-}
-
-#[test]
 fn survey_file_asks_for_the_sea() {
     let folder = Folder::with_survey();
     folder.write(

@@ -9,7 +9,18 @@ pub(crate) struct Bend {
     pub radius: f64,
 }
 
+/// The bending radius is at least this many posts of the DEM under the station.
+const SMALLEST_POSTS: f64 = 3.0;
+
 impl Bend {
+    /// For a radius asked along the ground and the post spacing under the station, m; `stretch` takes it to station level.
+    pub(crate) fn new(rise_m: f64, asked_m: f64, spacing_m: f64, stretch: f64) -> Self {
+        Self {
+            rise_m,
+            radius: asked_m.max(SMALLEST_POSTS * spacing_m) * stretch,
+        }
+    }
+
     /// Rise at a distance, m.
     #[inline]
     pub(crate) fn rise(&self, distance: f64) -> f64 {

@@ -51,10 +51,8 @@ pub fn brute_force(
         frame = StationFrame::new(station.lon_deg, station.lat_deg, surface.height_m);
     }
     let spacing_m = relief.layers[surface.layer].post_spacing_m;
-    let bend = (station.ground == Ground::Bend).then(|| Bend {
-        rise_m: misfit_m,
-        radius: settings.bend_radius_m.max(3.0 * spacing_m) * frame.stretch,
-    });
+    let bend = (station.ground == Ground::Bend)
+        .then(|| Bend::new(misfit_m, settings.bend_radius_m, spacing_m, frame.stretch));
     let zones_m: Vec<f64> = settings.zones_m().iter().map(|z| z.1).collect();
     let mut sums = vec![0.0; zones_m.len()];
     for layer in &relief.layers {

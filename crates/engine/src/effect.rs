@@ -18,8 +18,6 @@ const MOST_WALKS: usize = 6;
 const FLOOR: f64 = 2e-8;
 /// What the quadrature of the cells next to the station may miss, m per unit of G rho: 0.002 uGal in common rock.
 const NEAR_FLOOR: f64 = 1e-4;
-/// The bending radius is at least this many posts of the DEM under the station.
-const BEND_POSTS: f64 = 3.0;
 
 /// Computes the terrain effect at every station, in parallel on the current rayon pool, in the order given.
 ///
@@ -93,10 +91,8 @@ pub fn effect(
         Ground::Bend | Ground::Given => given,
     };
     let spacing_m = relief.layers[surface.layer].post_spacing_m;
-    let bend = (station.ground == Ground::Bend && misfit_m != 0.0).then(|| Bend {
-        rise_m: misfit_m,
-        radius: settings.bend_radius_m.max(BEND_POSTS * spacing_m) * frame.stretch,
-    });
+    let bend = (station.ground == Ground::Bend && misfit_m != 0.0)
+        .then(|| Bend::new(misfit_m, settings.bend_radius_m, spacing_m, frame.stretch));
     let zones_m = settings.zones_m();
     let edges = Edges::new(&zones_m);
     // mGal per metre of the walk's values

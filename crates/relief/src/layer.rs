@@ -409,17 +409,14 @@ fn pool_quad(cells: &Quad) -> [f64; 4] {
 
 #[inline]
 fn unpack(quad: &Quad, s: f64) -> [Moments; 4] {
-    let q = s * s / 12.0;
-    std::array::from_fn(|k| Moments {
-        area: s * s,
-        ox: 0.0,
-        oy: 0.0,
-        mxx: q,
-        mxy: 0.0,
-        myy: q,
-        mean: f64::from(quad.mean[k]),
-        var: f64::from(quad.var[k]),
-        cx: f64::from(quad.cx[k]),
-        cy: f64::from(quad.cy[k]),
+    let of = |values: &[f32; 4], k: usize| f64::from(values[k]);
+    std::array::from_fn(|k| {
+        Moments::of_square(
+            s,
+            of(&quad.mean, k),
+            of(&quad.var, k),
+            of(&quad.cx, k),
+            of(&quad.cy, k),
+        )
     })
 }

@@ -28,6 +28,27 @@ pub struct Moments {
     pub cy: f64,
 }
 
+impl Moments {
+    /// Those of a full square of width `s` about its middle.
+    #[inline]
+    #[must_use]
+    pub fn of_square(s: f64, mean: f64, var: f64, cx: f64, cy: f64) -> Self {
+        let q = s * s / 12.0;
+        Self {
+            area: s * s,
+            ox: 0.0,
+            oy: 0.0,
+            mxx: q,
+            mxy: 0.0,
+            myy: q,
+            mean,
+            var,
+            cx,
+            cy,
+        }
+    }
+}
+
 /// The surface of one cell: h = m + a x + b y + t x y, with x (column) and y (row) in cells from the cell's middle.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
 pub struct Bilinear {
@@ -78,18 +99,8 @@ impl Bilinear {
     #[must_use]
     pub fn moments(&self, s: f64) -> Moments {
         let q = s * s / 12.0;
-        Moments {
-            area: s * s,
-            ox: 0.0,
-            oy: 0.0,
-            mxx: q,
-            mxy: 0.0,
-            myy: q,
-            mean: self.m,
-            var: q * (self.a * self.a + self.b * self.b) + q * q * self.t * self.t,
-            cx: q * self.a,
-            cy: q * self.b,
-        }
+        let var = q * (self.a * self.a + self.b * self.b) + q * q * self.t * self.t;
+        Moments::of_square(s, self.m, var, q * self.a, q * self.b)
     }
 }
 
